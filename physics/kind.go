@@ -1,0 +1,75 @@
+package physics
+
+import (
+	"math"
+
+	"lumireach/stats"
+)
+
+// kind is a family of shapes: what the reader accepts and the compiler builds.
+type kind struct {
+	name       string
+	quantities []quantity // in the order of Fill
+	fromFile   bool       // events come from a CSV file instead of make
+	make       func(binning) stats.Shape
+	// check says what is wrong with which nominal quantity, or "". May be nil.
+	check func(b binning, at []float64) (key, what string)
+}
+
+// quantity is what an uncertainty may move, or a background leave free.
+type quantity struct {
+	key string
+	// relative quantities are positive, moved by relative sizes, and handed to
+	// Fill as logarithms.
+	relative bool
+	// dimension is the power of the window's unit that it carries.
+	dimension int
+	// bounds limits a free quantity, as offsets from its nominal value in the
+	// units of Fill.
+	bounds func(b binning, at float64) (lower, upper, step float64)
+}
+
+// local is a nominal value in the units of Fill.
+func (q quantity) local(value float64) float64 {
+	if q.relative {
+		return math.Log(value)
+	}
+	return value
+}
+
+var kinds = []kind{uniformKind, exponentialKind, gaussianKind, templateKind}
+
+func kindNamed(name string) (kind, bool) {
+	for _, k := range kinds {
+		if k.name == name {
+			return k, true
+		}
+	}
+	return kind{}, false
+}
+
+func kindNames() []string {
+	names := make([]string, len(kinds))
+	for i, k := range kinds {
+		names[i] = k.name
+	}
+	return names
+}
+
+func (k kind) quantityNames() []string {
+	names := make([]string, len(k.quantities))
+	for i, q := range k.quantities {
+		names[i] = q.key
+	}
+	return names
+}
+
+// index is the place of a quantity in Fill, -1 if the kind has none of that name.
+func (k kind) index(name string) int {
+	for i, q := range k.quantities {
+		if q.key == name {
+			return i
+		}
+	}
+	return -1
+}

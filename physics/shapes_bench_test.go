@@ -1,0 +1,37 @@
+package physics
+
+import (
+	"math"
+	"testing"
+
+	"lumireach/stats"
+)
+
+func BenchmarkFill(b *testing.B) {
+	window := binning{100, 160, 60}
+	for _, bench := range []struct {
+		name  string
+		shape stats.Shape
+		q     []float64
+	}{
+		{"gaussian", gaussianKind.make(window), []float64{126, math.Log(1.6)}},
+		{"exponential", exponentialKind.make(window), []float64{-0.03}},
+	} {
+		f := make([]float64, window.bins)
+		n := len(bench.q)
+		d1 := make([]float64, n*window.bins)
+		d2 := make([]float64, n*(n+1)/2*window.bins)
+		b.Run(bench.name+"/bins=60/fractions", func(b *testing.B) {
+			b.ReportAllocs()
+			for b.Loop() {
+				bench.shape.Fill(bench.q, f, nil, nil)
+			}
+		})
+		b.Run(bench.name+"/bins=60/derivatives", func(b *testing.B) {
+			b.ReportAllocs()
+			for b.Loop() {
+				bench.shape.Fill(bench.q, f, d1, d2)
+			}
+		})
+	}
+}

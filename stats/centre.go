@@ -1,0 +1,280 @@
+package stats
+
+import (
+	"errors"
+	"fmt"
+	"math"
+
+	"gonum.org/v1/gonum/mat"
+)
+
+// Held fixes one parameter of signals alone, by its index among the engine's
+// parameters, at a value in the signal of a Centre.
+type Held struct {
+	Param int
+	Value float64
+}
+
+// Centre is a point with the signal strength that its data look like.
+type Centre struct {
+	Point
+	Mu float64
+	// Spread is the standard deviation that auxiliary measurements are to be
+	// thrown with: 1, or more where the tail is wider than that. A parameter
+	// that multiplies a rate by much on the way to the centre bends the surface
+	// of equal q0 towards that of equal probability, along which the tail then
+	// stretches.
+	Spread []float64
+}
+
+// A parameter bends where it changes the logarithm of a background's rate by
+// more than bentRate at the centre.
+const (
+	bentRate   = 0.3
+	bentSpread = 1.8
+)
+
+// fewestEvents is what a free background keeps at least in a Centre: below it
+// the background-only fit has no interior solution.
+const fewestEvents = 0.3
+
+// Centre gives the most probable data without signal whose q0 is z²: the point
+// around which toys of a tail are thrown.
+//
+// Let the data be the Asimov data of some (μ, θ, φ) with auxiliary values at θ,
+// such that their background-only fit is the truth. Then the free fit has
+// deviance 0, and q0 = 2[Σ(λ* ln(λ*/λ0) - λ* + λ0) + ½|a*|²], twice the
+// large-deviation rate of the data. Since q0(x) <= D0(x) <= 2·rate(x) for every x, no
+// data with that q0 are more probable. For a given μ the background parameters p
+// solve the score equations of the truth,
+//
+//	Σ_i (λ_i(μ, p)/λ_i0 - 1) ∂λ_i0/∂p + (θ_p where p is constrained) = 0,
+//
+// and μ is the root of q0 = z². Where a background would have to go below
+// fewestEvents (or its nominal, if less) it stays there, and μ rises until q0,
+// then by a fit, is z² all the same.
+func (e *Engine) Centre(z float64, held ...Held) (Centre, error) {
+	c := newCentring(e, held)
+	// sqrt(q0) is nearly proportional to μ: a few steps of the secant.
+	mu, lastMu, lastRoot := 1.0, 0.0, 0.0
+	for range 100 {
+		q, err := c.q0(mu)
+		if err != nil {
+			return Centre{}, fmt.Errorf("most probable background-only data at %v standard deviations: %w", z, err)
+		}
+		root := math.Sqrt(q)
+		if math.Abs(root-z) < 1e-8*z {
+			return Centre{c.point(), mu, c.spread()}, nil
+		}
+		next := mu + (z-root)*(mu-lastMu)/(root-lastRoot)
+		if !(next > mu/4 && next < 4*mu) {
+			next = mu * math.Max(0.25, math.Min(4, z/root))
+		}
+		mu, lastMu, lastRoot = next, mu, root
+	}
+	return Centre{}, fmt.Errorf("no background-only data are found at %v standard deviations", z)
+}
+
+// centring is the state of one search for a Centre.
+type centring struct {
+	engine *Engine
+	fitter *Fitter
+	x      []float64   // variables, background parameters solved for
+	lambda []float64   // expectation at x
+	truth  []float64   // without signal, nominal
+	slopes [][]float64 // ∂λ0/∂p of the truth, by background parameter
+	floor  []float64   // lowest value of each background parameter
+}
+
+func newCentring(e *Engine, held []Held) *centring {
+	c := &centring{
+		engine: e,
+		fitter: e.Fitter(),
+		x:      e.nominal(),
+		lambda: make([]float64, e.bins),
+		truth:  e.Point(0, nil).Lambda,
+	}
+	c.slopes = c.jacobian()
+	for _, h := range held {
+		c.x[1+h.Param] = h.Value
+	}
+	for _, v := range e.background {
+		floor := e.params[v-1].Lower
+		if floor == 0 {
+			smallest := posInf
+			for _, ch := range e.channels {
+				for _, p := range ch.processes {
+					if p.factor == v {
+						smallest = math.Min(smallest, p.yield)
+					}
+				}
+			}
+			floor = math.Min(e.params[v-1].Nominal, fewestEvents/smallest)
+		}
+		c.floor = append(c.floor, floor)
+	}
+	return c
+}
+
+// jacobian is ∂λ/∂p at c.x for each background parameter, over all bins.
+func (c *centring) jacobian() [][]float64 {
+	e, f := c.engine, c.fitter
+	out := make([][]float64, len(e.background))
+	for k := range out {
+		out[k] = make([]float64, e.bins)
+	}
+	index := make(map[int]int, len(e.background))
+	for k, v := range e.background {
+		index[v] = k
+	}
+	for ci := range e.channels {
+		ch := &e.channels[ci]
+		f.expectations(ci, c.x, false, true)
+		columns := f.arrange(ci, false)
+		rows := f.jacobianRows(ci, c.x, false)
+		for u, r := range rows {
+			for i, col := range r.cols {
+				k, ok := index[ch.variables[col]]
+				if !ok {
+					continue
+				}
+				for bin, v := range columns[u] {
+					out[k][ch.first+bin] += r.vals[i] * f.spaces[ci].scale[u] * v
+				}
+			}
+		}
+	}
+	return out
+}
+
+// q0 solves the score equations at mu, from the last solution, and gives q0 of
+// the data.
+func (c *centring) q0(mu float64) (float64, error) {
+	c.x[0] = mu
+	if err := c.solve(); err != nil {
+		return math.NaN(), err
+	}
+	rate, clamped := 0.0, false
+	for i, l := range c.lambda {
+		if l > 0 {
+			rate += deviance(l, c.truth[i])
+		}
+		if l == 0 {
+			rate += c.truth[i]
+		}
+	}
+	for k, v := range c.engine.background {
+		if c.engine.params[v-1].Constrained {
+			rate += c.x[v] * c.x[v] / 2
+		}
+		clamped = clamped || c.x[v] <= c.floor[k]
+	}
+	if !clamped {
+		return 2 * rate, nil
+	}
+	fit := c.fitter.AtFresh(c.point().Asimov(), 0)
+	return fit.Deviance, fit.Status.Err()
+}
+
+// solve is Newton's method on the score equations, with the parameters at
+// their floor left out.
+func (c *centring) solve() error {
+	e := c.engine
+	n := len(e.background)
+	residual := make([]float64, n)
+	for range 100 {
+		for ci := range e.channels {
+			c.fitter.expect(ci, c.x, c.lambda, false)
+		}
+		jacobian := c.jacobian()
+		var solved []int
+		for j, v := range e.background {
+			residual[j] = 0
+			for i, l := range c.lambda {
+				if c.truth[i] > 0 {
+					residual[j] += (l/c.truth[i] - 1) * c.slopes[j][i]
+				}
+			}
+			if e.params[v-1].Constrained {
+				residual[j] += c.x[v]
+			}
+			// At the floor the score may ask for even less, not for more.
+			if c.x[v] > c.floor[j] || residual[j] < 0 {
+				solved = append(solved, j)
+			}
+		}
+		if len(solved) == 0 {
+			return nil
+		}
+		a := mat.NewDense(len(solved), len(solved), nil)
+		b := mat.NewVecDense(len(solved), nil)
+		for r, j := range solved {
+			b.SetVec(r, -residual[j])
+			for s, k := range solved {
+				sum := 0.0
+				for i := range c.lambda {
+					if c.truth[i] > 0 {
+						sum += jacobian[k][i] * c.slopes[j][i] / c.truth[i]
+					}
+				}
+				if j == k && e.params[e.background[j]-1].Constrained {
+					sum++
+				}
+				a.Set(r, s, sum)
+			}
+		}
+		var step mat.VecDense
+		if err := step.SolveVec(a, b); err != nil {
+			return err
+		}
+		moved := 0.0
+		for r, j := range solved {
+			v := e.background[j]
+			unit := e.params[v-1].Step
+			move := math.Max(-5*unit, math.Min(5*unit, step.AtVec(r)))
+			to := math.Min(e.params[v-1].Upper, math.Max(c.floor[j], c.x[v]+move))
+			moved = math.Max(moved, math.Abs(to-c.x[v])/unit)
+			c.x[v] = to
+		}
+		if moved < 1e-11 {
+			return nil
+		}
+	}
+	return errors.New("the score equations did not converge")
+}
+
+// point is the data found: auxiliary values at the solution, those of held
+// parameters and of signals alone at nominal.
+func (c *centring) point() Point {
+	p := Point{Lambda: append([]float64(nil), c.lambda...), A: make([]float64, len(c.engine.aux))}
+	for k, j := range c.engine.aux {
+		if c.engine.movesBackground[j] {
+			p.A[k] = c.x[1+j]
+		}
+	}
+	return p
+}
+
+// spread is Centre.Spread of the data found.
+func (c *centring) spread() []float64 {
+	e := c.engine
+	change := make([]float64, len(e.params))
+	for _, ch := range e.channels {
+		for _, p := range ch.processes {
+			if p.signal {
+				continue
+			}
+			for _, effect := range p.rate {
+				change[effect.Param-1] = math.Max(change[effect.Param-1], math.Abs(effect.Lin*c.x[effect.Param]))
+			}
+		}
+	}
+	out := make([]float64, len(e.aux))
+	for k, j := range e.aux {
+		out[k] = 1
+		if change[j] > bentRate {
+			out[k] = bentSpread
+		}
+	}
+	return out
+}

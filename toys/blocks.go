@@ -1,0 +1,96 @@
+package toys
+
+import (
+	"context"
+	"runtime"
+	"sync"
+	"sync/atomic"
+
+	"lumireach/stats"
+)
+
+// fitter is what the loop over toys needs of *stats.Fitter.
+type fitter interface {
+	Free(d *stats.Data, near, maxMu float64) stats.Fit
+	Q0(d *stats.Data, near float64) (float64, stats.Status)
+	QTilde(d *stats.Data, mu float64, free stats.Fit) (float64, stats.Status)
+}
+
+// runner shares blocks of toys among workers.
+type runner struct {
+	ctx       context.Context
+	config    Config
+	newFitter func(*stats.Engine) fitter
+
+	mutex    sync.Mutex
+	progress Progress
+}
+
+func newRunner(ctx context.Context, c Config) *runner {
+	return &runner{ctx: ctx, config: c, newFitter: func(e *stats.Engine) fitter { return e.Fitter() }}
+}
+
+// worker owns what a block of toys needs.
+type worker struct {
+	fit    fitter
+	data   stats.Data
+	stream *stream
+	logs   []float64
+}
+
+const (
+	fewestBlocks = 40  // what a bootstrap over blocks needs
+	blockToys    = 512 // most toys of one point in a block
+)
+
+// run calls work once for each block, on as many workers as there are. Work
+// writes to its block's own place, so that the result is the same whoever does
+// it and whenever.
+func (r *runner) run(e *stats.Engine, points, blocks int, work func(w *worker, block int)) error {
+	workers := r.config.Workers
+	if workers == 0 {
+		workers = runtime.GOMAXPROCS(0)
+	}
+	workers = min(workers, blocks)
+	var next atomic.Int64
+	var group sync.WaitGroup
+	for range workers {
+		group.Go(func() {
+			w := &worker{
+				fit:    r.newFitter(e),
+				data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())},
+				stream: newStream(),
+				logs:   make([]float64, points),
+			}
+			for r.ctx.Err() == nil {
+				block := int(next.Add(1)) - 1
+				if block >= blocks {
+					return
+				}
+				work(w, block)
+			}
+		})
+	}
+	group.Wait()
+	return r.ctx.Err()
+}
+
+// stage names what is under way.
+func (r *runner) stage(name string) {
+	r.mutex.Lock()
+	defer r.mutex.Unlock()
+	r.progress.Stage = name
+	if r.config.Progress != nil {
+		r.config.Progress(r.progress)
+	}
+}
+
+// done tells that so many toys more are ready.
+func (r *runner) done(toys int) {
+	r.mutex.Lock()
+	defer r.mutex.Unlock()
+	r.progress.Done += int64(toys)
+	if r.config.Progress != nil {
+		r.config.Progress(r.progress)
+	}
+}

@@ -1,0 +1,34 @@
+package toys
+
+// Config is how hard to work and for what; its zero value with Luminosities
+// set runs the formulas alone.
+type Config struct {
+	// Luminosities to report, in the scenario's unit, each > 0 and finite.
+	Luminosities []float64
+	// Toys is how many pseudo-experiments to throw per luminosity and
+	// hypothesis. Zero means formulas only; otherwise at least MinToys.
+	Toys int
+	// Seed of every random stream. Equal seeds give equal bytes.
+	Seed uint64
+	// Workers bounds the goroutines. It never changes a result. Zero means
+	// all cores.
+	Workers int
+	// Mu is the signal strength that is hoped for, of discovery only. Zero
+	// means 1.
+	Mu float64
+	// Confidence of limits, between 0.5 and 1. Zero means 0.95.
+	Confidence float64
+	// Progress, where not nil, is told how much of the work is done. It is
+	// called from one goroutine at a time.
+	Progress func(Progress)
+}
+
+// Progress of a run, in pseudo-experiments.
+type Progress struct {
+	Stage       string // what is under way, for example "luminosity 10: limits"
+	Done, Total int64
+}
+
+// MinToys is the smallest sample that order-statistic errors of a 2σ quantile
+// can be taken from.
+const MinToys = 200

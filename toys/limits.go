@@ -1,0 +1,340 @@
+package toys
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"sort"
+
+	"gonum.org/v1/gonum/stat"
+
+	"lumireach/stats"
+)
+
+// limits throws the toys that the expected limits at one luminosity need: a
+// pilot at the limits of the formulas, then the main sample at the limits of
+// the pilot.
+func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Exclusion, error) {
+	share := max(r.config.Toys/5, fewestBlocks)
+	alpha := 1 - r.config.Confidence
+	start := pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))
+	pilot, err := r.joint(e, luminosity, pilotLimitToys, start, max(share/4, fewestBlocks))
+	if err != nil {
+		return Exclusion{}, err
+	}
+	rough := pilot.roots(alpha, pilot.outcomes(pilot.once(), 0))
+	main, err := r.joint(e, luminosity, limitToys, mainNodes(rough, start), share)
+	if err != nil {
+		return Exclusion{}, err
+	}
+	x := r.solve(main, luminosity, alpha)
+	x.Toys = pilot.size() + main.size()
+	x.FailedFits = pilot.failures() + main.failures()
+	return x, nil
+}
+
+// planned is how many toys one luminosity takes, as well as it can be told
+// before the pilot's limits are known.
+func (r *runner) planned(e *stats.Engine, formula Band) int64 {
+	share := max(r.config.Toys/5, fewestBlocks)
+	points := len(pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))) + 2
+	toys := points * (share + max(share/4, fewestBlocks))
+	if e.Bare() == 0 {
+		toys += 2 * r.config.Toys
+	}
+	return int64(toys)
+}
+
+// pilotNodes are the limits of the formulas, but none below 2.9 expected signal
+// events, where no limit can be.
+func pilotNodes(formula Band, signal, background stats.Point) []float64 {
+	events := 0.0
+	for bin, l := range signal.Lambda {
+		events += l - background.Lambda[bin]
+	}
+	var nodes []float64
+	for _, mu := range []float64{formula.Minus2, formula.Minus1, formula.Median, formula.Plus1, formula.Plus2} {
+		if !math.IsNaN(mu) {
+			nodes = append(nodes, math.Max(mu, 2.9/events))
+		}
+	}
+	if len(nodes) == 0 {
+		nodes = append(nodes, 3/events)
+	}
+	return spread(nodes)
+}
+
+// mainNodes are the roots of the pilot, kept within a factor 3 of its nodes.
+func mainNodes(rough [5]float64, start []float64) []float64 {
+	var nodes []float64
+	for _, mu := range rough {
+		if !math.IsNaN(mu) {
+			nodes = append(nodes, math.Max(start[0]/3, math.Min(3*start[len(start)-1], mu)))
+		}
+	}
+	if len(nodes) == 0 {
+		nodes = start
+	}
+	return spread(nodes)
+}
+
+// spread merges nodes within 3 % and keeps at least three, which a quadratic needs.
+func spread(nodes []float64) []float64 {
+	slices.Sort(nodes)
+	kept := nodes[:1]
+	for _, mu := range nodes[1:] {
+		if mu > 1.03*kept[len(kept)-1] {
+			kept = append(kept, mu)
+		}
+	}
+	for len(kept) < 3 {
+		kept = append(kept, 1.25*kept[len(kept)-1])
+		if len(kept) < 3 {
+			kept = append([]float64{kept[0] / 1.25}, kept...)
+		}
+	}
+	return kept
+}
+
+// outcome is the experiment at a quantile, as one node orders them.
+type outcome struct {
+	cls    float64
+	q      float64 // its q̃ at the node
+	weight float64 // probability, without signal, of all experiments tied with it
+}
+
+// outcomes gives, by node, the experiments at the quantiles of the limit, with
+// the blocks weighted as given. Failed fits count as fails says: -1 in no tail,
+// +1 in every tail, 0 not at all.
+//
+// No toy's own limit is ever computed: an experiment's limit is at most μ where
+// its CLs(μ) is at most α, and that is so for all q̃_μ from some value on. So at
+// each node the background toys are ordered by q̃, the outcome at the quantile
+// is taken, ties included, and its CLs = P(q̃ >= q|μ)/P(q̃ >= q|0) (Read, J. Phys.
+// G 28 (2002) 2693) is interpolated to α over ln μ.
+func (s *jointSample) outcomes(multiplicity []float64, fails int) [][5]outcome {
+	out := make([][5]outcome, len(s.nodes))
+	for k := range s.nodes {
+		out[k] = s.at5(k, multiplicity, fails)
+	}
+	return out
+}
+
+func (s *jointSample) at5(k int, multiplicity []float64, fails int) (out [5]outcome) {
+	w := s.walk(k, multiplicity, fails)
+	found, before := 0, w.sum0
+	for found < len(quantiles) && w.next() {
+		for found < len(quantiles) && (w.done() || w.sum0 >= quantiles[found]*w.total0) {
+			out[found] = outcome{w.cls(), w.q, (w.sum0 - before) / w.total0}
+			found++
+		}
+		before = w.sum0
+	}
+	return out
+}
+
+// walk goes through the outcomes of one node in falling order of q̃, summing
+// their probabilities without signal and at the node's μ.
+type walk struct {
+	sample          *jointSample
+	node            int
+	multiplicity    []float64
+	place           int
+	q               float64 // of the outcome reached, ties included
+	sum0, sumMu     float64
+	total0, totalMu float64
+}
+
+func (s *jointSample) walk(k int, multiplicity []float64, fails int) *walk {
+	w := &walk{sample: s, node: k, multiplicity: multiplicity}
+	for _, p := range s.order[k] {
+		w0, wMu := w.weights(p)
+		w.total0 += w0
+		w.totalMu += wMu
+	}
+	if fails != 0 {
+		for _, p := range s.bad[k] {
+			w0, wMu := w.weights(p)
+			w.total0 += w0
+			w.totalMu += wMu
+			if fails > 0 {
+				w.sum0 += w0
+				w.sumMu += wMu
+			}
+		}
+	}
+	return w
+}
+
+func (w *walk) weights(p place) (w0, wMu float64) {
+	toy := w.sample.at(p)
+	m := w.multiplicity[p.block]
+	return m * toy.weight[0], m * toy.weight[1+w.node]
+}
+
+func (w *walk) done() bool { return w.place == len(w.sample.order[w.node]) }
+
+// next goes on by one outcome, all toys tied with it; false at the end.
+func (w *walk) next() bool {
+	if w.done() {
+		return false
+	}
+	order := w.sample.order[w.node]
+	w.q = w.sample.at(order[w.place]).q[w.node]
+	for !w.done() {
+		p := order[w.place]
+		if w.sample.at(p).q[w.node] < w.q-tie {
+			break
+		}
+		w0, wMu := w.weights(p)
+		w.sum0 += w0
+		w.sumMu += wMu
+		w.place++
+	}
+	return true
+}
+
+// cls is P(q̃ >= q|μ)/P(q̃ >= q|0) of the outcome reached.
+func (w *walk) cls() float64 { return w.sumMu / w.totalMu / (w.sum0 / w.total0) }
+
+// roots solves CLs = α for the five quantiles; NaN where the nodes do not bracket it.
+func (s *jointSample) roots(alpha float64, outcomes [][5]outcome) (mu [5]float64) {
+	cls := make([]float64, len(s.nodes))
+	for i := range mu {
+		for k := range s.nodes {
+			cls[k] = outcomes[k][i].cls
+		}
+		mu[i] = crossing(s.nodes, cls, alpha)
+	}
+	return mu
+}
+
+// crossing interpolates where a curve of CLs over rising signal strengths falls
+// to alpha: inverse quadratic in ln μ through the three nearest nodes, on the
+// normal quantiles of CLs, in which it is nearly a line.
+func crossing(nodes, cls []float64, alpha float64) float64 {
+	var x, y []float64
+	goal := stats.PhiInverse(alpha)
+	for k, c := range cls {
+		if v := stats.PhiInverse(c) - goal; !math.IsNaN(v) && !math.IsInf(v, 0) {
+			x = append(x, math.Log(nodes[k]))
+			y = append(y, v)
+		}
+	}
+	if len(x) < 2 {
+		return math.NaN()
+	}
+	// The three nearest in y that fall strictly.
+	index := make([]int, len(x))
+	for i := range index {
+		index[i] = i
+	}
+	sort.SliceStable(index, func(i, j int) bool { return math.Abs(y[index[i]]) < math.Abs(y[index[j]]) })
+	index = index[:min(3, len(index))]
+	slices.Sort(index)
+	for i := 1; i < len(index); i++ {
+		if !(y[index[i]] < y[index[i-1]]) {
+			return math.NaN()
+		}
+	}
+	logMu := 0.0
+	for _, i := range index {
+		term := x[i]
+		for _, j := range index {
+			if j != i {
+				term *= y[j] / (y[j] - y[i])
+			}
+		}
+		logMu += term
+	}
+	// Half a node spacing beyond the ends is interpolation's reach.
+	lowest, highest := x[0], x[len(x)-1]
+	reach := (highest - lowest) / float64(len(x)-1)
+	if logMu < lowest-reach || logMu > highest+reach {
+		return math.NaN()
+	}
+	return math.Exp(logMu)
+}
+
+// replicas of a bootstrap: the error of a standard error is 1/sqrt(2·replicas).
+const replicas = 200
+
+// atom is the probability from which tied experiments count as one discrete
+// outcome, and rare how often a resampled set may take another one before the
+// quantile counts as lying on its edge: two standard errors, one-sided.
+const (
+	atom = 0.01
+	rare = 0.023
+)
+
+// solve gives the limits of a sample with their errors, by a bootstrap over
+// blocks (Efron, Ann. Stat. 7 (1979) 1), each of which holds all components in
+// the same proportion. Failed fits, counted in every tail and in none, widen
+// the errors.
+func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
+	best := s.outcomes(s.once(), 0)
+	mu := s.roots(alpha, best)
+	most, least := mu, mu
+	if s.failures() > 0 {
+		most = s.roots(alpha, s.outcomes(s.once(), 1))
+		least = s.roots(alpha, s.outcomes(s.once(), -1))
+	}
+
+	var same, different [5][]float64 // limits of resampled sets, by whether the outcome is the best one's
+	missing := [5]int{}
+	r.resample(limitToys, luminosity, len(s.blocks), func(_ int, multiplicity []float64) {
+		again := s.outcomes(multiplicity, 0)
+		for i, value := range s.roots(alpha, again) {
+			k := nearest(s.nodes, mu[i])
+			switch {
+			case math.IsNaN(value):
+				missing[i]++
+			case best[k][i].weight > atom && math.Abs(again[k][i].q-best[k][i].q) > tie:
+				different[i] = append(different[i], value)
+			default:
+				same[i] = append(same[i], value)
+			}
+		}
+	})
+
+	var x Exclusion
+	var errs, others [5]float64
+	for i := range mu {
+		others[i] = math.NaN()
+		switch {
+		case math.IsNaN(mu[i]):
+			x.Why = "CLs does not reach the confidence level at the signal strengths tried"
+			continue
+		case missing[i] > replicas/10:
+			mu[i] = math.NaN()
+			x.Why = fmt.Sprintf("too few toys: %d of %d resampled sets give no limit", missing[i], replicas)
+			continue
+		}
+		if float64(len(different[i])) > rare*replicas {
+			slices.Sort(different[i])
+			others[i] = different[i][len(different[i])/2]
+		}
+		errs[i] = deviation(same[i]) + math.Abs(most[i]-least[i])/2
+	}
+	x.MuUp, x.MuUpError, x.MuUpOther = band(mu), band(errs), band(others)
+	return x
+}
+
+// nearest is the node nearest to mu in ratio.
+func nearest(nodes []float64, mu float64) int {
+	best := 0
+	for k, node := range nodes {
+		if math.Abs(math.Log(node/mu)) < math.Abs(math.Log(nodes[best]/mu)) {
+			best = k
+		}
+	}
+	return best
+}
+
+// deviation is the standard deviation of a sample.
+func deviation(v []float64) float64 {
+	if len(v) < 2 {
+		return math.NaN()
+	}
+	return stat.StdDev(v, nil)
+}

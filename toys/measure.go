@@ -1,0 +1,141 @@
+package toys
+
+import (
+	"math"
+
+	"lumireach/stats"
+)
+
+// measurement is what toys say at one luminosity about the three fractions of
+// experiments: the quantity that a formula gives too, and its bootstrap
+// replicas.
+type measurement struct {
+	luminosity float64
+	value      [3]float64
+	bound      [3]float64 // how far failed fits could move it
+	replicas   [3][]float64
+	toys       int
+	failed     int
+}
+
+func newMeasurement(luminosity float64) measurement {
+	m := measurement{luminosity: luminosity}
+	for k := range m.replicas {
+		m.replicas[k] = make([]float64, replicas)
+	}
+	return m
+}
+
+// resample calls do with the multiplicities of bootstrap replicas of so many
+// blocks (Efron, Ann. Stat. 7 (1979) 1). Equal keys give equal replicas.
+func (r *runner) resample(use purpose, luminosity float64, blocks int, do func(replica int, multiplicity []float64)) {
+	s := newStream()
+	s.restart(key{r.config.Seed, bootstrap + use, luminosity, 0, 0})
+	multiplicity := make([]float64, blocks)
+	for k := range replicas {
+		clear(multiplicity)
+		for range blocks {
+			multiplicity[s.Intn(blocks)]++
+		}
+		do(k, multiplicity)
+	}
+}
+
+// measureDiscovery throws the toys of a discovery goal at one luminosity: the
+// significance that each fraction of experiments reaches.
+func (r *runner) measureDiscovery(e *stats.Engine, luminosity, goal float64, toys int) (measurement, error) {
+	m := newMeasurement(luminosity)
+	signal, err := r.signal(e, luminosity, toys)
+	if err != nil {
+		return m, err
+	}
+	const near = 1.3 // standard deviations from the goal that a correction is fitted in
+	var needed []float64
+	if len(signal.toys) > 0 {
+		for _, fraction := range fractions {
+			if q := signal.quantile(1 - fraction); math.Abs(math.Sqrt(q)-goal) < near {
+				needed = append(needed, q)
+			}
+		}
+	}
+	null, err := r.null(e, luminosity, span{goal - 1, goal + 1}, toys, needed)
+	if err != nil {
+		return m, err
+	}
+	m.toys = len(signal.toys) + signal.failed + null.total
+	m.failed = signal.failed + null.failing
+	if len(signal.toys) == 0 || len(null.toys) == 0 {
+		for k := range m.value {
+			m.value[k] = math.NaN()
+		}
+		return m, nil
+	}
+	var q [3][]float64
+	for k, fraction := range fractions {
+		u := 1 - fraction
+		e := null.p(signal.quantile(u))
+		m.value[k] = stats.Significance(e.p)
+		if !null.trusts(e) {
+			m.value[k] = math.NaN()
+		}
+		if m.failed > 0 {
+			lift := float64(signal.failed) / float64(len(signal.toys))
+			high := null.p(signal.quantile(math.Min(1, u+lift))).p
+			low := null.p(signal.quantile(math.Max(0, u-lift))).p + null.failed/float64(null.total)
+			m.bound[k] = (stats.Significance(high) - stats.Significance(low)) / 2
+		}
+		q[k] = make([]float64, replicas)
+	}
+	r.resample(signalToys, luminosity, signal.blocks, func(b int, multiplicity []float64) {
+		for k, fraction := range fractions {
+			q[k][b] = signal.resampled(1-fraction, multiplicity)
+		}
+	})
+	r.resample(nullToys, luminosity, null.blocks, func(b int, multiplicity []float64) {
+		for k := range fractions {
+			m.replicas[k][b] = stats.Significance(null.resampled(q[k][b], multiplicity))
+		}
+	})
+	return m, nil
+}
+
+// measureExclusion throws the toys of the exclusion goal at one luminosity: the
+// normal quantile of the fraction of experiments without signal whose CLs at
+// μ = 1 is at most α. The value is the same for all fractions.
+func (r *runner) measureExclusion(e *stats.Engine, luminosity float64, toys int) (measurement, error) {
+	m := newMeasurement(luminosity)
+	s, err := r.joint(e, luminosity, exclusionToys, []float64{1}, toys/3)
+	if err != nil {
+		return m, err
+	}
+	alpha := 1 - r.config.Confidence
+	value := stats.PhiInverse(s.excluded(alpha, s.once(), 0))
+	bound := 0.0
+	if m.failed = s.failures(); m.failed > 0 {
+		bound = math.Abs(stats.PhiInverse(s.excluded(alpha, s.once(), 1))-stats.PhiInverse(s.excluded(alpha, s.once(), -1))) / 2
+	}
+	m.toys = s.size()
+	for k := range m.value {
+		m.value[k], m.bound[k] = value, bound
+	}
+	r.resample(exclusionToys, luminosity, len(s.blocks), func(b int, multiplicity []float64) {
+		v := stats.PhiInverse(s.excluded(alpha, multiplicity, 0))
+		for k := range m.replicas {
+			m.replicas[k][b] = v
+		}
+	})
+	return m, nil
+}
+
+// excluded is the probability, without signal, of CLs <= alpha at the first
+// node.
+func (s *jointSample) excluded(alpha float64, multiplicity []float64, fails int) float64 {
+	w := s.walk(0, multiplicity, fails)
+	excluded := 0.0
+	for w.next() {
+		if w.cls() <= alpha {
+			excluded = w.sum0 / w.total0
+		}
+	}
+	return excluded
+}

@@ -1,0 +1,140 @@
+package toys
+
+import (
+	"math"
+
+	"lumireach/stats"
+)
+
+// proposal is a point to throw experiments from.
+type proposal struct {
+	stats.Point
+	spread []float64 // standard deviations of the auxiliary measurements; nil for 1
+	near   float64   // signal strength that its data look like, where fits begin
+	toys   int
+}
+
+// mixture throws experiments from several proposals and knows the probability
+// of each experiment under every one of them.
+type mixture struct {
+	proposals []proposal
+	counts    [][]poisson // by proposal and bin
+	logRatio  [][]float64 // ln(λ/λ_reference), by proposal and bin
+	offset    []float64   // what the logarithm of the density has besides
+	total     int         // toys
+}
+
+// newMixture prepares proposals for one model. The reference of their densities
+// is the mean of their expectations, which is zero only where all of them are.
+func newMixture(proposals []proposal) *mixture {
+	m := &mixture{proposals: proposals}
+	bins := len(proposals[0].Lambda)
+	reference := make([]float64, bins)
+	for _, p := range proposals {
+		m.total += p.toys
+		for bin, l := range p.Lambda {
+			reference[bin] += l / float64(len(proposals))
+		}
+	}
+	for _, p := range proposals {
+		counts := make([]poisson, bins)
+		ratio := make([]float64, bins)
+		offset := 0.0
+		for bin, l := range p.Lambda {
+			counts[bin] = newPoisson(l)
+			if reference[bin] > 0 {
+				ratio[bin] = math.Log(l / reference[bin])
+			}
+			offset -= l - reference[bin]
+		}
+		for _, s := range p.spread {
+			offset -= math.Log(s)
+		}
+		m.counts = append(m.counts, counts)
+		m.logRatio = append(m.logRatio, ratio)
+		m.offset = append(m.offset, offset)
+	}
+	return m
+}
+
+// throw fills d with an experiment from proposal k: Poisson counts, normal
+// auxiliary measurements.
+func (m *mixture) throw(d *stats.Data, k int, s *stream) {
+	counts := m.counts[k]
+	for bin := range d.N {
+		d.N[bin] = counts[bin].draw(s)
+	}
+	p := &m.proposals[k]
+	for j, a := range p.A {
+		z := s.NormFloat64()
+		if p.spread != nil {
+			z *= p.spread[j]
+		}
+		d.A[j] = a + z
+	}
+}
+
+// logDensities sets dst[k] to the logarithm of the probability density of d
+// under proposal k, up to a term that is the same for all.
+func (m *mixture) logDensities(dst []float64, d *stats.Data) {
+	for k, ratio := range m.logRatio {
+		p := &m.proposals[k]
+		sum := m.offset[k]
+		for bin, n := range d.N {
+			if n > 0 { // 0 × ln 0 is 0 here
+				sum += n * ratio[bin]
+			}
+		}
+		for j, a := range p.A {
+			z := d.A[j] - a
+			if p.spread != nil {
+				z /= p.spread[j]
+			}
+			sum -= z * z / 2
+		}
+		dst[k] = sum
+	}
+}
+
+// balance replaces the log densities of one experiment by the weights
+// p_k/Σ c_l p_l of the balance heuristic, c_l being the share of toys from
+// proposal l: Veach & Guibas, SIGGRAPH 95; Owen & Zhou, J. Am. Stat. Assoc. 95 (2000) 135.
+func (m *mixture) balance(logs []float64) {
+	largest := math.Inf(-1)
+	for _, l := range logs {
+		largest = math.Max(largest, l)
+	}
+	sum := 0.0
+	for k, l := range logs {
+		logs[k] = math.Exp(l - largest)
+		sum += logs[k] * float64(m.proposals[k].toys)
+	}
+	scale := float64(m.total) / sum
+	for k := range logs {
+		logs[k] *= scale
+	}
+}
+
+// inBlock is how many toys of proposal k fall to one of so many blocks: all
+// blocks hold all proposals in the same proportion, to one toy.
+func (m *mixture) inBlock(k, block, blocks int) int {
+	toys := m.proposals[k].toys
+	return toys*(block+1)/blocks - toys*block/blocks
+}
+
+// blockStarts is where each block's toys begin when all stand in one row.
+func (m *mixture) blockStarts() []int {
+	largest := 0
+	for _, p := range m.proposals {
+		largest = max(largest, p.toys)
+	}
+	blocks := max(fewestBlocks, (largest+blockToys-1)/blockToys)
+	starts := make([]int, blocks+1)
+	for b := range blocks {
+		starts[b+1] = starts[b]
+		for k := range m.proposals {
+			starts[b+1] += m.inBlock(k, b, blocks)
+		}
+	}
+	return starts
+}

@@ -1,0 +1,132 @@
+package toys
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"runtime"
+
+	"lumireach/stats"
+)
+
+// Reach gives the expected discovery and exclusion reach of a search by the
+// asymptotic formulas and, where toys are asked for, by pseudo-experiments.
+// Cancelling ctx ends it with ctx's error.
+func Reach(ctx context.Context, search stats.Search, config Config) (*ReachResult, error) {
+	if err := config.complete(); err != nil {
+		return nil, err
+	}
+	return reach(newRunner(ctx, config), search)
+}
+
+// complete checks a Config and puts in what its zero values stand for.
+func (c *Config) complete() error {
+	if len(c.Luminosities) == 0 {
+		return errors.New("no luminosity is asked for")
+	}
+	for _, l := range c.Luminosities {
+		if !(l > 0) || math.IsInf(l, 1) {
+			return fmt.Errorf("luminosity is %v, must be finite and > 0", l)
+		}
+	}
+	if c.Toys != 0 && c.Toys < MinToys {
+		return fmt.Errorf("%d toys are too few for the error of a 2σ quantile: 0 for formulas only, or at least %d", c.Toys, MinToys)
+	}
+	if c.Workers < 0 {
+		return fmt.Errorf("workers are %d, must be >= 0", c.Workers)
+	}
+	if c.Workers == 0 {
+		c.Workers = runtime.GOMAXPROCS(0)
+	}
+	if c.Mu == 0 {
+		c.Mu = 1
+	}
+	if !(c.Mu > 0) || math.IsInf(c.Mu, 1) {
+		return fmt.Errorf("signal strength is %v, must be finite and > 0", c.Mu)
+	}
+	if c.Confidence == 0 {
+		c.Confidence = 0.95
+	}
+	if !(c.Confidence > 0.5 && c.Confidence < 1) {
+		return fmt.Errorf("confidence is %v, must lie between 0.5 and 1", c.Confidence)
+	}
+	return nil
+}
+
+func reach(r *runner, search stats.Search) (*ReachResult, error) {
+	c := r.config
+	result := &ReachResult{Config: c}
+	engines := make([]*stats.Engine, len(c.Luminosities))
+	for i, l := range c.Luminosities {
+		e, err := search.Engine(l)
+		if err != nil {
+			return nil, fmt.Errorf("luminosity %v: %w", l, err)
+		}
+		engines[i] = e
+		formula, err := formulas(e, c)
+		if err != nil {
+			return nil, fmt.Errorf("luminosity %v: %w", l, err)
+		}
+		result.Points = append(result.Points, Point{Luminosity: l, Formula: formula, SmallestCount: e.SmallestCount(c.Mu)})
+	}
+	goals, plateaus, err := formulaGoals(search, c)
+	if err != nil {
+		return nil, err
+	}
+	result.Goals = goals
+
+	if c.Toys > 0 {
+		r.progress.Total = r.plannedGoals(result.Goals)
+		for i := range result.Points {
+			r.progress.Total += r.planned(engines[i], result.Points[i].Formula.Exclusion.MuUp)
+		}
+		for i := range result.Points {
+			p := &result.Points[i]
+			answer := &Answer{}
+			r.stage(fmt.Sprintf("luminosity %.4g: discovery", p.Luminosity))
+			if answer.Discovery, err = r.discover(engines[i], p.Luminosity, p.Formula.Discovery.Z); err != nil {
+				return nil, err
+			}
+			r.stage(fmt.Sprintf("luminosity %.4g: limits", p.Luminosity))
+			if answer.Exclusion, err = r.limits(engines[i], p.Luminosity, p.Formula.Exclusion.MuUp); err != nil {
+				return nil, err
+			}
+			p.Toys = answer
+		}
+		if err := r.toyGoals(search, result.Goals); err != nil {
+			return nil, err
+		}
+	}
+	result.Cautions = cautions(result, engines, plateaus)
+	return result, nil
+}
+
+// formulas is the asymptotic answer at one luminosity.
+func formulas(e *stats.Engine, c Config) (Answer, error) {
+	var a Answer
+	z, err := e.MedianZ(c.Mu)
+	switch {
+	case errors.Is(err, stats.ErrOneEvent):
+		a.Discovery = noDiscovery(err.Error(), -math.Expm1(-c.Mu*e.Bare()))
+	case err != nil:
+		return a, err
+	default:
+		a.Discovery = Discovery{ZAtLeast: noBand(), ChanceOne: math.NaN()}
+		var zs [5]float64
+		for i := range zs {
+			zs[i] = math.Max(0, z+float64(i-2))
+		}
+		a.Discovery.Z = band(zs)
+		a.Discovery.Chance3 = stats.Phi(z - 3)
+		a.Discovery.Chance5 = stats.Phi(z - 5)
+	}
+	var mu [5]float64
+	for i := range mu {
+		if mu[i], err = e.ExpectedLimit(float64(i-2), c.Confidence); err != nil {
+			a.Exclusion.Why = err.Error()
+		}
+	}
+	a.Exclusion.MuUp, a.Exclusion.MuUpOther = band(mu), noBand()
+	return a, nil
+}

@@ -144,7 +144,7 @@ func (t table) only(keys ...string) {
 	key := slices.MinFunc(unknown, func(a, b string) int {
 		return t.at[join(t.path, a)] - t.at[join(t.path, b)]
 	})
-	t.failKey(key, "unknown key %s in %s: %s", shown(key), t.name, suggest(key, keys))
+	t.failKey(key, "unknown key %s in %s: %s", shown(key), t.name, Suggest(key, keys))
 }
 
 // found says in plain words what kind of value was written.

@@ -41,8 +41,8 @@ func editDistance(a, b string) int {
 	return row[len(b)]
 }
 
-// suggest names the nearest candidate or, where none is near, all of them.
-func suggest(word string, candidates []string) string {
+// Suggest names the nearest candidate or, where none is near, all of them.
+func Suggest(word string, candidates []string) string {
 	if best := nearest(word, candidates); best != "" {
 		return fmt.Sprintf("did you mean %q?", best)
 	}

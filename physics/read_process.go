@@ -95,7 +95,7 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 	}
 	k, known := kindNamed(name)
 	if !known {
-		t.failKey("kind", "unknown kind of shape %s: %s", shown(name), suggest(name, kindNames()))
+		t.failKey("kind", "unknown kind of shape %s: %s", shown(name), Suggest(name, kindNames()))
 		return
 	}
 	t.name = "a shape of kind " + shown(name)
@@ -169,7 +169,7 @@ func readFree(t table, c Channel, p *Process) {
 			case t.failed():
 				return
 			case !slices.Contains(allowed, name):
-				t.fail(path, "%s has no %s to leave free: %s", t.name, shown(name), suggest(name, allowed))
+				t.fail(path, "%s has no %s to leave free: %s", t.name, shown(name), Suggest(name, allowed))
 			case slices.Contains(p.Free[:i], name):
 				t.fail(path, "%q is listed twice", name)
 			case name != "rate" && c.Bins == 1:

@@ -86,7 +86,7 @@ func (s *Scenario) readEffect(t table) []Effect {
 			c := &s.Channels[channel]
 			k, known := c.process(process)
 			if !known {
-				t.fail(place, "channel %q has no process %s: %s", c.Name, shown(process), suggest(process, c.processNames()))
+				t.fail(place, "channel %q has no process %s: %s", c.Name, shown(process), Suggest(process, c.processNames()))
 				return nil
 			}
 			t.checkMove(c, &c.Processes[k], moves)
@@ -127,7 +127,7 @@ func (s *Scenario) channelsOf(t table, process, place string) []int {
 				return nil
 			}
 			if !known {
-				t.fail(joinIndex(join(t.path, "channels"), i), "there is no channel %s: %s", shown(name), suggest(name, s.channelNames()))
+				t.fail(joinIndex(join(t.path, "channels"), i), "there is no channel %s: %s", shown(name), Suggest(name, s.channelNames()))
 				return nil
 			}
 			out = append(out, c)
@@ -147,7 +147,7 @@ func (s *Scenario) channelsOf(t table, process, place string) []int {
 		}
 	}
 	if len(out) == 0 {
-		t.fail(place, "no channel has a process %s: %s", shown(process), suggest(process, all))
+		t.fail(place, "no channel has a process %s: %s", shown(process), Suggest(process, all))
 	}
 	return out
 }
@@ -161,7 +161,7 @@ func (t table) checkMove(c *Channel, p *Process, moves string) {
 		a := k.index(moves)
 		if a < 0 {
 			t.failKey("moves", "process %q of channel %q has no %s to move: %s",
-				p.Name, c.Name, shown(moves), suggest(moves, append([]string{"rate"}, k.quantityNames()...)))
+				p.Name, c.Name, shown(moves), Suggest(moves, append([]string{"rate"}, k.quantityNames()...)))
 			return
 		}
 		relative = k.quantities[a].relative

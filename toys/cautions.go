@@ -7,69 +7,120 @@ import (
 	"lumireach/stats"
 )
 
-// cautions are what a reader must know before using the numbers, each once and
-// only where it applies.
+// list collects cautions.
+type list []string
+
+func (l *list) say(format string, args ...any) { *l = append(*l, fmt.Sprintf(format, args...)) }
+
+// cautions are what a reader must know before using the numbers of a reach, each
+// once and only where it applies.
 func cautions(r *ReachResult, engines []*stats.Engine, p plateaus) []string {
-	c := r.Config
-	var out []string
-	say := func(format string, args ...any) { out = append(out, fmt.Sprintf(format, args...)) }
-
-	say("Expected, not observed: half of all experiments do worse than the median.")
-	say("Significances are local: no correction for a search at many masses.")
-
+	var out list
+	out.say("Expected, not observed: half of all experiments do worse than the median.")
+	out.say("Significances are local: nothing corrects for a search at many masses.")
 	smallest, at := math.Inf(1), 0.0
-	for _, point := range r.Points {
+	formulas := make([]Exclusion, len(r.Points))
+	thrown, failed, tails := 0, 0, false
+	for i, point := range r.Points {
+		formulas[i] = point.Formula.Exclusion
 		if point.SmallestCount < smallest {
 			smallest, at = point.SmallestCount, point.Luminosity
 		}
-	}
-	if smallest < 10 {
-		say("The asymptotic formulas assume many events; the smallest expected count of a bin with signal is %.2g, at luminosity %.4g.", smallest, at)
-	}
-	below := false
-	for i, point := range r.Points {
-		signal, background := 0.0, 0.0
-		for _, l := range engines[i].Point(1, nil).Lambda {
-			signal += l
-		}
-		for _, l := range engines[i].Point(0, nil).Lambda {
-			background += l
-		}
-		if point.Formula.Exclusion.MuUp.Minus2*(signal-background) < -math.Log(1-c.Confidence) {
-			below = true
-		}
-	}
-	if below {
-		say("Some limits of the formulas lie below %.4g signal events, where no true %v %% CLs limit without systematic uncertainties can be.", -math.Log(1-c.Confidence), 100*c.Confidence)
-	}
-	if p.z < 7 {
-		say("At infinite luminosity the systematic uncertainties leave a median Z of %.3g.", p.z)
-	}
-
-	thrown, failed, tails := 0, 0, false
-	for _, point := range r.Points {
 		if point.Toys == nil {
 			continue
 		}
 		d, x := point.Toys.Discovery, point.Toys.Exclusion
 		thrown += d.Toys + d.NullToys + x.Toys
 		failed += d.FailedFits + x.FailedFits
-		for _, z := range []float64{d.ZAtLeast.Minus2, d.ZAtLeast.Minus1, d.ZAtLeast.Median, d.ZAtLeast.Plus1, d.ZAtLeast.Plus2} {
+		for _, z := range d.ZAtLeast.list() {
 			tails = tails || !math.IsNaN(z)
 		}
 	}
+	for _, g := range r.Goals {
+		if g.Toys != nil {
+			thrown += g.Toys.Toys
+			failed += g.Toys.FailedFits
+		}
+	}
+	out.fewEvents(smallest, at)
+	out.impossibleLimits(r.Config, formulas, engines)
+	if p.z < 7 {
+		out.say("At infinite luminosity the systematic uncertainties leave a median Z of %.3g.", p.z)
+	}
 	if tails {
-		say("Where a significance lies beyond the tail that the toys reach, only a lower bound is given.")
+		out.say("Where a significance lies beyond the tail that the toys are trusted with, only a lower bound is given.")
 	}
-	if failed > 0 {
-		say("%d of %d toys had a fit that failed; the errors allow for them on either side.", failed, thrown)
+	out.failures(failed, thrown)
+	if r.Config.Toys > 0 {
+		out.say("Tails are estimated by weighted toys; the effective sample size stands beside each in the JSON.")
 	}
-	if float64(failed) > 1e-3*float64(thrown) {
-		say("Warning: more than 1 in 1000 fits failed: the numbers could move by more than their errors if the failures are not like the rest.")
-	}
-	if c.Toys > 0 {
-		say("The toys are thrown from the model that they are fitted with: a bias from a wrong background shape is not tested.")
-	}
-	say("Plan on simulation or sidebands and fix the method before looking at the signal window; the collaboration's own statistics rules come first. 5σ is a convention, and a p-value is not the probability that there is no signal.")
+	out.always(r.Config)
 	return out
+}
+
+// bandsCautions are those of limits alone.
+func bandsCautions(r *BandsResult, engines []*stats.Engine) []string {
+	var out list
+	out.say("Expected, not observed: half of all experiments set a weaker limit than the median.")
+	smallest, at := math.Inf(1), 0.0
+	formulas := make([]Exclusion, len(r.Points))
+	thrown, failed := 0, 0
+	for i, p := range r.Points {
+		formulas[i] = p.Formula
+		if n := engines[i].SmallestCount(1); n < smallest {
+			smallest, at = n, p.Luminosity
+		}
+		if p.Toys != nil {
+			thrown += p.Toys.Toys
+			failed += p.Toys.FailedFits
+		}
+	}
+	out.fewEvents(smallest, at)
+	out.impossibleLimits(r.Config, formulas, engines)
+	out.failures(failed, thrown)
+	out.always(r.Config)
+	return out
+}
+
+func (l *list) fewEvents(smallest, luminosity float64) {
+	const few = 10 // common practice, no source
+	if smallest < few {
+		l.say("The asymptotic formulas assume many events; the smallest expected count of a bin that the signal reaches is %.2g, at luminosity %.4g.", smallest, luminosity)
+	}
+}
+
+// impossibleLimits names limits of the formulas below -ln(1-confidence) events,
+// the limit of an experiment that sees nothing.
+func (l *list) impossibleLimits(c Config, formulas []Exclusion, engines []*stats.Engine) {
+	least := -math.Log(1 - c.Confidence)
+	for i, x := range formulas {
+		events := 0.0
+		for _, n := range engines[i].Point(1, nil).Lambda {
+			events += n
+		}
+		for _, n := range engines[i].Point(0, nil).Lambda {
+			events -= n
+		}
+		if x.MuUp.Minus2*events < least {
+			l.say("Some limits of the formulas lie below %.4g signal events: without systematic uncertainties no true %v %% CLs limit can.", least, 100*c.Confidence)
+			return
+		}
+	}
+}
+
+func (l *list) failures(failed, thrown int) {
+	if failed == 0 {
+		return
+	}
+	l.say("%d of %d toys had a fit that failed; the errors allow for them on either side.", failed, thrown)
+	if float64(failed) > 1e-3*float64(thrown) {
+		l.say("Warning: more than 1 in 1000 fits failed; if the failures are unlike the rest, the numbers could move by more than their errors.")
+	}
+}
+
+func (l *list) always(c Config) {
+	if c.Toys > 0 {
+		l.say("Toys are thrown from the model that they are fitted with: a bias from a wrong background shape is not tested.")
+	}
+	l.say("Plan on simulation or sidebands and fix the method before looking at the signal window. The collaboration's own statistics rules come first; 5σ is a convention, and a p-value is not the probability that there is no signal.")
 }

@@ -1,5 +1,7 @@
 package toys
 
+import "time"
+
 // Config is how hard to work and for what; its zero value with Luminosities
 // set runs the formulas alone.
 type Config struct {
@@ -18,6 +20,12 @@ type Config struct {
 	Mu float64
 	// Confidence of limits, between 0.5 and 1. Zero means 0.95.
 	Confidence float64
+	// Precision, where above 0, replaces Toys: they are raised until the relative
+	// errors of the median significance and limit and of the goals are below it.
+	Precision float64
+	// Within bounds the time of Precision; zero means no bound. What was reached
+	// by then is the result.
+	Within time.Duration
 	// Progress, where not nil, is told how much of the work is done. It is
 	// called from one goroutine at a time.
 	Progress func(Progress)

@@ -33,16 +33,12 @@ func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Excl
 	return x, nil
 }
 
-// planned is how many toys one luminosity takes, as well as it can be told
-// before the pilot's limits are known.
-func (r *runner) planned(e *stats.Engine, formula Band) int64 {
+// plannedLimits is how many toys the limits of one luminosity take, as well as
+// it can be told before the pilot's limits are known.
+func (r *runner) plannedLimits(e *stats.Engine, formula Band) int64 {
 	share := max(r.config.Toys/5, fewestBlocks)
-	points := len(pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))) + 2
-	toys := points * (share + max(share/4, fewestBlocks))
-	if e.Bare() == 0 {
-		toys += 2 * r.config.Toys
-	}
-	return int64(toys)
+	proposals := len(pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))) + 2
+	return int64(proposals * (share + max(share/4, fewestBlocks)))
 }
 
 // pilotNodes are the limits of the formulas, but none below 2.9 expected signal

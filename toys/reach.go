@@ -17,7 +17,13 @@ func Reach(ctx context.Context, search stats.Search, config Config) (*ReachResul
 	if err := config.complete(); err != nil {
 		return nil, err
 	}
-	return reach(newRunner(ctx, config), search)
+	return precisely(ctx, config, func(ctx context.Context, c Config) (*ReachResult, float64, error) {
+		result, err := reach(newRunner(ctx, c), search)
+		if err != nil {
+			return nil, 0, err
+		}
+		return result, result.worst(), nil
+	}, func(r *ReachResult, note string) { r.Notes = append(r.Notes, note) })
 }
 
 // complete checks a Config and puts in what its zero values stand for.
@@ -79,7 +85,10 @@ func reach(r *runner, search stats.Search) (*ReachResult, error) {
 	if c.Toys > 0 {
 		r.progress.Total = r.plannedGoals(result.Goals)
 		for i := range result.Points {
-			r.progress.Total += r.planned(engines[i], result.Points[i].Formula.Exclusion.MuUp)
+			r.progress.Total += r.plannedLimits(engines[i], result.Points[i].Formula.Exclusion.MuUp)
+			if engines[i].Bare() == 0 {
+				r.progress.Total += int64(2 * c.Toys)
+			}
 		}
 		for i := range result.Points {
 			p := &result.Points[i]
@@ -121,12 +130,20 @@ func formulas(e *stats.Engine, c Config) (Answer, error) {
 		a.Discovery.Chance3 = stats.Phi(z - 3)
 		a.Discovery.Chance5 = stats.Phi(z - 5)
 	}
+	a.Exclusion = formulaExclusion(e, c.Confidence)
+	return a, nil
+}
+
+// formulaExclusion is the asymptotic limit band at one luminosity.
+func formulaExclusion(e *stats.Engine, confidence float64) Exclusion {
+	x := Exclusion{MuUpOther: noBand()}
 	var mu [5]float64
 	for i := range mu {
-		if mu[i], err = e.ExpectedLimit(float64(i-2), c.Confidence); err != nil {
-			a.Exclusion.Why = err.Error()
+		var err error
+		if mu[i], err = e.ExpectedLimit(float64(i-2), confidence); err != nil {
+			x.Why = err.Error()
 		}
 	}
-	a.Exclusion.MuUp, a.Exclusion.MuUpOther = band(mu), noBand()
-	return a, nil
+	x.MuUp = band(mu)
+	return x
 }

@@ -89,6 +89,22 @@ type ReachResult struct {
 	Config   Config
 	Points   []Point
 	Goals    []Goal
+	Notes    []string // how the run went, such as the toys that a precision took
+	Cautions []string // each once, only where it applies
+}
+
+// BandsPoint is the expected limits of the engines at one luminosity.
+type BandsPoint struct {
+	Luminosity float64
+	Formula    Exclusion
+	Toys       *Exclusion // nil with Config.Toys = 0
+}
+
+// BandsResult is the expected-limit bands on μ against luminosity.
+type BandsResult struct {
+	Config   Config
+	Points   []BandsPoint
+	Notes    []string // how the run went
 	Cautions []string // each once, only where it applies
 }
 

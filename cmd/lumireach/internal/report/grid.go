@@ -1,0 +1,93 @@
+package report
+
+import (
+	"io"
+	"strings"
+	"unicode/utf8"
+)
+
+// grid is a table of right-aligned cells, but for the first columns of words.
+// One rule stands under its header lines.
+type grid struct {
+	words int   // left-aligned columns
+	gaps  []int // spaces before each column
+	lines [][]string
+	rule  int // lines above the rule
+}
+
+func (g *grid) add(cells ...string) { g.lines = append(g.lines, cells) }
+
+// header ends the header lines.
+func (g *grid) header() { g.rule = len(g.lines) }
+
+func (g *grid) write(w io.Writer) error {
+	var widths []int
+	for _, line := range g.lines {
+		for k, cell := range line {
+			if k == len(widths) {
+				widths = append(widths, 0)
+			}
+			widths[k] = max(widths[k], utf8.RuneCountInString(cell))
+		}
+	}
+	total := 0
+	for k, width := range widths {
+		total += width + g.gap(k)
+	}
+	var b strings.Builder
+	for i, line := range g.lines {
+		if i == g.rule && g.rule > 0 {
+			b.WriteString(strings.Repeat("─", total) + "\n")
+		}
+		var row strings.Builder
+		for k, cell := range line {
+			space := strings.Repeat(" ", widths[k]-utf8.RuneCountInString(cell))
+			row.WriteString(strings.Repeat(" ", g.gap(k)))
+			if k < g.words {
+				row.WriteString(cell + space)
+			} else {
+				row.WriteString(space + cell)
+			}
+		}
+		b.WriteString(strings.TrimRight(row.String(), " ") + "\n")
+	}
+	_, err := io.WriteString(w, b.String())
+	return err
+}
+
+func (g *grid) gap(k int) int {
+	switch {
+	case k < len(g.gaps):
+		return g.gaps[k]
+	case k == 0:
+		return 0
+	}
+	return 3
+}
+
+// paragraphs wraps notes at a width, each with a mark before it.
+func paragraphs(notes []string, mark string, width int) string {
+	var b strings.Builder
+	for _, note := range notes {
+		indent := strings.Repeat(" ", utf8.RuneCountInString(mark))
+		line := mark
+		used := utf8.RuneCountInString(mark)
+		first := true
+		for _, word := range strings.Fields(note) {
+			length := utf8.RuneCountInString(word)
+			if !first && used+1+length > width {
+				b.WriteString(line + "\n")
+				line, used, first = indent, utf8.RuneCountInString(indent), true
+			}
+			if !first {
+				line += " "
+				used++
+			}
+			line += word
+			used += length
+			first = false
+		}
+		b.WriteString(line + "\n")
+	}
+	return b.String()
+}

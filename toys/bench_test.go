@@ -5,7 +5,6 @@ import (
 	"math"
 	"testing"
 
-	"lumireach/physics"
 	"lumireach/stats"
 )
 
@@ -13,25 +12,16 @@ import (
 // windows combined.
 var benches = []struct{ name, file string }{{"A", "count"}, {"B", "window"}, {"C", "combination"}}
 
-func benchEngine(b testing.TB, file string) *stats.Engine {
-	b.Helper()
-	s, err := physics.Read("../physics/testdata/bench/" + file + ".toml")
-	if err != nil {
-		b.Fatal(err)
-	}
-	return engine(b, s.Model, 1)
-}
-
 // BenchmarkToys is one toy: throwing it, the fits, its test statistic.
 func BenchmarkToys(b *testing.B) {
 	for _, s := range benches {
-		e := benchEngine(b, s.file)
+		e := engine(b, scenario(b, s.file), 1)
 		for _, kind := range []struct {
 			name string
 			mu   float64
 		}{{"null", 0}, {"signal", 1}} {
 			b.Run(fmt.Sprintf("%s/%s-q0", s.name, kind.name), func(b *testing.B) {
-				m := newMixture([]proposal{{Point: e.Point(kind.mu, nil), toys: 1}})
+				m := mixtureOf(b, []proposal{{Point: e.Point(kind.mu, nil), toys: tableDraws}})
 				f := e.Fitter()
 				stream := newStream()
 				stream.restart(key{seed: 1})
@@ -51,7 +41,7 @@ func BenchmarkToys(b *testing.B) {
 			if err != nil {
 				b.Fatal(err)
 			}
-			m := newMixture([]proposal{{Point: e.Point(0, nil), toys: 1}})
+			m := mixtureOf(b, []proposal{{Point: e.Point(0, nil), toys: tableDraws}})
 			f := e.Fitter()
 			stream := newStream()
 			stream.restart(key{seed: 1})

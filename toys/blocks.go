@@ -24,6 +24,8 @@ type runner struct {
 
 	mutex    sync.Mutex
 	progress Progress
+
+	checks [2]Check // of the weights, by significance
 }
 
 func newRunner(ctx context.Context, c Config) *runner {
@@ -46,28 +48,36 @@ const (
 // run calls work once for each block, on as many workers as there are. Work
 // writes to its block's own place, so that the result is the same whoever does
 // it and whenever.
-func (r *runner) run(e *stats.Engine, points, blocks int, work func(w *worker, block int)) error {
+func (r *runner) run(e *stats.Engine, proposals, blocks int, work func(w *worker, block int)) error {
+	return r.share(blocks, func() func(int) {
+		w := &worker{
+			fit:    r.newFitter(e),
+			data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())},
+			stream: newStream(),
+			logs:   make([]float64, proposals),
+		}
+		return func(block int) { work(w, block) }
+	})
+}
+
+// share has tasks 0 … n-1 done by the workers, each of which begins by making
+// what it needs. It stops early only with the context.
+func (r *runner) share(n int, begin func() func(task int)) error {
 	workers := r.config.Workers
 	if workers == 0 {
 		workers = runtime.GOMAXPROCS(0)
 	}
-	workers = min(workers, blocks)
 	var next atomic.Int64
 	var group sync.WaitGroup
-	for range workers {
+	for range min(workers, n) {
 		group.Go(func() {
-			w := &worker{
-				fit:    r.newFitter(e),
-				data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())},
-				stream: newStream(),
-				logs:   make([]float64, points),
-			}
+			do := begin()
 			for r.ctx.Err() == nil {
-				block := int(next.Add(1)) - 1
-				if block >= blocks {
+				task := int(next.Add(1)) - 1
+				if task >= n {
 					return
 				}
-				work(w, block)
+				do(task)
 			}
 		})
 	}

@@ -51,6 +51,11 @@ func cautions(r *ReachResult, engines []*stats.Engine, p plateaus) []string {
 		out.say("Where a significance lies beyond the tail that the toys are trusted with, only a lower bound is given.")
 	}
 	out.failures(failed, thrown)
+	for _, c := range r.Checks {
+		if math.Abs(c.Pull) > suspicious {
+			out.say("Warning: %d of %d plain background-only toys reach q0 of %v, where the weighted ones expect %.1f: do not trust the tails.", c.Passing, c.Plain, c.Z*c.Z, c.Expected)
+		}
+	}
 	if r.Config.Toys > 0 {
 		out.say("Tails are estimated by weighted toys; the effective sample size stands beside each in the JSON.")
 	}

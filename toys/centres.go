@@ -1,6 +1,7 @@
 package toys
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"sort"
@@ -31,7 +32,7 @@ func (s span) levels() []level {
 		out = append(out, level{from + (to-from)*k/steps, 1})
 	}
 	out = append(out, level{to + 1, 0.5}, level{to + 2, 0.5})
-	for _, z := range []float64{3, 5} {
+	for _, z := range conventions {
 		if z < from-0.5 || z > to+0.5 {
 			out = append(out, level{z, 0.5})
 		}
@@ -45,7 +46,7 @@ func (s span) levels() []level {
 // parameter of signals alone moves a signal's shape, the peak of a tail's toy
 // stands anywhere in its range: the centres are then stratified over it. finer is
 // 1, or 2 for half the spacing.
-func tailProposals(e *stats.Engine, wanted span, toys, finer int) ([]proposal, error) {
+func (r *runner) tailProposals(e *stats.Engine, wanted span, toys, finer int) ([]proposal, error) {
 	// Two toys at least, for a variance within each proposal.
 	count := func(share float64) int { return max(2, int(math.Round(share*float64(toys)))) }
 	out := []proposal{{Point: e.Point(0, nil), toys: count(nullShare)}}
@@ -54,6 +55,11 @@ func tailProposals(e *stats.Engine, wanted span, toys, finer int) ([]proposal, e
 	for _, l := range levels {
 		sum += l.weight
 	}
+	type place struct {
+		z    float64
+		held []stats.Held
+	}
+	places := make([]place, 1)
 	for _, l := range levels {
 		strata := strata(e.Floating(), l.z, finer)
 		total := 0.0
@@ -61,13 +67,22 @@ func tailProposals(e *stats.Engine, wanted span, toys, finer int) ([]proposal, e
 			total += s.weight
 		}
 		for _, s := range strata {
-			c, err := e.Centre(l.z, s.held...)
-			if err != nil {
-				return nil, fmt.Errorf("toys for a tail: %w", err)
-			}
 			share := (1 - nullShare) * l.weight / sum * s.weight / total
-			out = append(out, proposal{c.Point, c.Spread, c.Mu, count(share)})
+			places = append(places, place{l.z, s.held})
+			out = append(out, proposal{toys: count(share)})
 		}
+	}
+	failures := make([]error, len(out))
+	err := r.share(len(out)-1, func() func(int) {
+		return func(k int) {
+			p := places[k+1]
+			c, err := e.Centre(p.z, p.held...)
+			failures[k+1] = err
+			out[k+1].Point, out[k+1].spread, out[k+1].near = c.Point, c.Spread, c.Mu
+		}
+	})
+	if err := errors.Join(append(failures, err)...); err != nil {
+		return nil, fmt.Errorf("toys for a tail: %w", err)
 	}
 	return out, nil
 }

@@ -11,20 +11,26 @@ import (
 // quantiles are Φ(-2), Φ(-1), ½, Φ(1), Φ(2), in the order of Band.
 var quantiles = [5]float64{stats.Phi(-2), stats.Phi(-1), 0.5, stats.Phi(1), stats.Phi(2)}
 
+// conventions are the significances called evidence and discovery.
+var conventions = [2]float64{3, 5}
+
 // oneSigma is the confidence of a standard error.
 var oneSigma = 1 - 2*stats.PValue(1)
 
 // throw throws toys of proposals and takes their q0, with their weights under
 // the first of them, in the order of blocks and proposals.
 func (r *runner) throw(e *stats.Engine, luminosity float64, use purpose, proposals []proposal) (sample, error) {
-	m := newMixture(proposals)
+	m, err := r.newMixture(proposals)
+	if err != nil {
+		return sample{}, err
+	}
 	starts := m.blockStarts()
 	blocks := len(starts) - 1
 	s := sample{toys: make([]weighted, starts[blocks]), blocks: blocks}
 	for _, p := range proposals {
 		s.thrown = append(s.thrown, p.toys)
 	}
-	err := r.run(e, len(proposals), blocks, func(w *worker, block int) {
+	err = r.run(e, len(proposals), blocks, func(w *worker, block int) {
 		place := s.toys[starts[block]:starts[block+1]]
 		i := 0
 		for component := range proposals {
@@ -80,7 +86,7 @@ func (r *runner) null(e *stats.Engine, luminosity float64, wanted span, toys int
 }
 
 func (r *runner) nullOnce(e *stats.Engine, luminosity float64, wanted span, toys, round int) (*tail, error) {
-	proposals, err := tailProposals(e, wanted, toys, min(round, 2))
+	proposals, err := r.tailProposals(e, wanted, toys, min(round, 2))
 	if err != nil {
 		return nil, err
 	}
@@ -107,10 +113,16 @@ func (r *runner) discover(e *stats.Engine, luminosity float64, formula Band) (Di
 			needed = append(needed, signal.quantile(u))
 		}
 	}
+	for _, z := range conventions {
+		if math.Abs(z-formula.Median) < 2 {
+			needed = append(needed, z*z)
+		}
+	}
 	null, err := r.null(e, luminosity, span{formula.Minus2, formula.Plus2}, c.Toys, needed)
 	if err != nil {
 		return Discovery{}, err
 	}
+	r.check(null)
 	return summarise(signal, null), nil
 }
 
@@ -150,8 +162,8 @@ func summarise(signal *ranked, null *tail) Discovery {
 		zError[i] = math.Hypot(err, quantileError(signal, u, null))
 	}
 	d.Z, d.ZError, d.ZAtLeast = band(z), band(zError), band(atLeast)
-	d.Chance3, d.Chance3Error = chance(signal, null, 3)
-	d.Chance5, d.Chance5Error = chance(signal, null, 5)
+	d.Chance3, d.Chance3Error = chance(signal, null, conventions[0])
+	d.Chance5, d.Chance5Error = chance(signal, null, conventions[1])
 	if math.IsNaN(d.Chance3) || math.IsNaN(d.Chance5) {
 		d.ChanceWhy = why
 	}

@@ -34,12 +34,15 @@ func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes [
 		proposals = append(proposals, proposal{Point: e.Point(mu, nil), near: mu, toys: each})
 	}
 	proposals = append(proposals, proposal{Point: deficit(e, nodes[len(nodes)/2]), toys: each})
-	m := newMixture(proposals)
+	m, err := r.newMixture(proposals)
+	if err != nil {
+		return nil, err
+	}
 	starts := m.blockStarts()
 	blocks := len(starts) - 1
 	s := &jointSample{nodes: nodes, blocks: make([][]limitToy, blocks)}
 	hypotheses := 1 + len(nodes)
-	err := r.run(e, len(proposals), blocks, func(w *worker, block int) {
+	err = r.run(e, len(proposals), blocks, func(w *worker, block int) {
 		count := starts[block+1] - starts[block]
 		toys := make([]limitToy, count)
 		memory := make([]float64, count*(hypotheses+len(nodes)))

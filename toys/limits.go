@@ -23,14 +23,23 @@ func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Excl
 		return Exclusion{}, err
 	}
 	rough := pilot.roots(alpha, pilot.outcomes(pilot.once(), 0))
-	main, err := r.joint(e, luminosity, limitToys, mainNodes(rough, start), share)
-	if err != nil {
-		return Exclusion{}, err
+	nodes := mainNodes(rough, start)
+	thrown, failed := pilot.size(), pilot.failures()
+	for round := 1; ; round++ {
+		main, err := r.joint(e, luminosity, limitToys, nodes, share)
+		if err != nil {
+			return Exclusion{}, err
+		}
+		thrown += main.size()
+		failed += main.failures()
+		x := r.solve(main, luminosity, alpha)
+		if x.Why == "" || round == 2 {
+			x.Toys, x.FailedFits = thrown, failed
+			return x, nil
+		}
+		// A few pilot toys can put a node too far off: take the formulas' as well.
+		nodes = spread(append(nodes, start...))
 	}
-	x := r.solve(main, luminosity, alpha)
-	x.Toys = pilot.size() + main.size()
-	x.FailedFits = pilot.failures() + main.failures()
-	return x, nil
 }
 
 // plannedLimits is how many toys the limits of one luminosity take, as well as
@@ -207,7 +216,8 @@ func (s *jointSample) roots(alpha float64, outcomes [][5]outcome) (mu [5]float64
 
 // crossing interpolates where a curve of CLs over rising signal strengths falls
 // to alpha: inverse quadratic in ln μ through the three nearest nodes, on the
-// normal quantiles of CLs, in which it is nearly a line.
+// normal quantiles of CLs, in which it is nearly a line. Where noise makes those
+// three rise, a line through two nodes has to do.
 func crossing(nodes, cls []float64, alpha float64) float64 {
 	var x, y []float64
 	goal := stats.PhiInverse(alpha)
@@ -220,36 +230,46 @@ func crossing(nodes, cls []float64, alpha float64) float64 {
 	if len(x) < 2 {
 		return math.NaN()
 	}
-	// The three nearest in y that fall strictly.
-	index := make([]int, len(x))
-	for i := range index {
-		index[i] = i
+	// One node spacing beyond the ends is as far as a curve is continued.
+	lowest, highest := x[0], x[len(x)-1]
+	reach := (highest - lowest) / float64(len(x)-1)
+	near := make([]int, len(x))
+	for i := range near {
+		near[i] = i
 	}
-	sort.SliceStable(index, func(i, j int) bool { return math.Abs(y[index[i]]) < math.Abs(y[index[j]]) })
-	index = index[:min(3, len(index))]
-	slices.Sort(index)
-	for i := 1; i < len(index); i++ {
-		if !(y[index[i]] < y[index[i-1]]) {
-			return math.NaN()
+	sort.SliceStable(near, func(i, j int) bool { return math.Abs(y[near[i]]) < math.Abs(y[near[j]]) })
+	for points := min(3, len(x)); points >= 2; points-- {
+		used := slices.Sorted(slices.Values(near[:points]))
+		if logMu := inverse(x, y, used); logMu >= lowest-reach && logMu <= highest+reach {
+			return math.Exp(logMu)
 		}
 	}
-	logMu := 0.0
-	for _, i := range index {
+	// The first fall through zero.
+	for i := 1; i < len(x); i++ {
+		if y[i-1] >= 0 && y[i] < 0 {
+			return math.Exp(inverse(x, y, []int{i - 1, i}))
+		}
+	}
+	return math.NaN()
+}
+
+// inverse is the value at y = 0 of the polynomial x(y) through the points used
+// (Lagrange, DLMF 3.3.1), NaN unless y falls from each to the next.
+func inverse(x, y []float64, used []int) float64 {
+	sum := 0.0
+	for k, i := range used {
+		if k > 0 && !(y[i] < y[used[k-1]]) {
+			return math.NaN()
+		}
 		term := x[i]
-		for _, j := range index {
+		for _, j := range used {
 			if j != i {
 				term *= y[j] / (y[j] - y[i])
 			}
 		}
-		logMu += term
+		sum += term
 	}
-	// Half a node spacing beyond the ends is interpolation's reach.
-	lowest, highest := x[0], x[len(x)-1]
-	reach := (highest - lowest) / float64(len(x)-1)
-	if logMu < lowest-reach || logMu > highest+reach {
-		return math.NaN()
-	}
-	return math.Exp(logMu)
+	return sum
 }
 
 // replicas of a bootstrap: the error of a standard error is 1/sqrt(2·replicas).
@@ -300,6 +320,10 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
 		switch {
 		case math.IsNaN(mu[i]):
 			x.Why = "CLs does not reach the confidence level at the signal strengths tried"
+			continue
+		case math.IsNaN(most[i]) || math.IsNaN(least[i]):
+			mu[i] = math.NaN()
+			x.Why = "so many fits failed that they leave the limit open"
 			continue
 		case missing[i] > replicas/10:
 			mu[i] = math.NaN()

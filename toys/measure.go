@@ -62,6 +62,7 @@ func (r *runner) measureDiscovery(e *stats.Engine, luminosity, goal float64, toy
 	if err != nil {
 		return m, err
 	}
+	r.check(null)
 	m.toys = len(signal.toys) + signal.failed + null.total
 	m.failed = signal.failed + null.failing
 	if len(signal.toys) == 0 || len(null.toys) == 0 {

@@ -26,8 +26,13 @@ type mixture struct {
 
 // newMixture prepares proposals for one model. The reference of their densities
 // is the mean of their expectations, which is zero only where all of them are.
-func newMixture(proposals []proposal) *mixture {
-	m := &mixture{proposals: proposals}
+func (r *runner) newMixture(proposals []proposal) (*mixture, error) {
+	m := &mixture{
+		proposals: proposals,
+		counts:    make([][]poisson, len(proposals)),
+		logRatio:  make([][]float64, len(proposals)),
+		offset:    make([]float64, len(proposals)),
+	}
 	bins := len(proposals[0].Lambda)
 	reference := make([]float64, bins)
 	for _, p := range proposals {
@@ -36,25 +41,27 @@ func newMixture(proposals []proposal) *mixture {
 			reference[bin] += l / float64(len(proposals))
 		}
 	}
-	for _, p := range proposals {
-		counts := make([]poisson, bins)
-		ratio := make([]float64, bins)
-		offset := 0.0
-		for bin, l := range p.Lambda {
-			counts[bin] = newPoisson(l)
-			if reference[bin] > 0 {
-				ratio[bin] = math.Log(l / reference[bin])
-			}
-			offset -= l - reference[bin]
+	err := r.share(len(proposals), func() func(int) {
+		return func(k int) { m.prepare(k, reference) }
+	})
+	return m, err
+}
+
+func (m *mixture) prepare(k int, reference []float64) {
+	p := &m.proposals[k]
+	counts := make([]poisson, len(reference))
+	ratio := make([]float64, len(reference))
+	for bin, l := range p.Lambda {
+		counts[bin] = newPoisson(l, p.toys)
+		if reference[bin] > 0 {
+			ratio[bin] = math.Log(l / reference[bin])
 		}
-		for _, s := range p.spread {
-			offset -= math.Log(s)
-		}
-		m.counts = append(m.counts, counts)
-		m.logRatio = append(m.logRatio, ratio)
-		m.offset = append(m.offset, offset)
+		m.offset[k] -= l - reference[bin]
 	}
-	return m
+	for _, s := range p.spread {
+		m.offset[k] -= math.Log(s)
+	}
+	m.counts[k], m.logRatio[k] = counts, ratio
 }
 
 // throw fills d with an experiment from proposal k: Poisson counts, normal

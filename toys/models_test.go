@@ -3,10 +3,39 @@ package toys
 import (
 	"context"
 	"math"
+	"os"
+	"path/filepath"
+	"strings"
 	"testing"
 
+	"lumireach/physics"
 	"lumireach/stats"
 )
+
+// scenario reads one of the benchmark scenarios of physics, with parts of its
+// text replaced.
+func scenario(t testing.TB, name string, replace ...string) stats.Search {
+	t.Helper()
+	text, err := os.ReadFile("../physics/testdata/bench/" + name + ".toml")
+	if err != nil {
+		t.Fatal(err)
+	}
+	return read(t, strings.NewReplacer(replace...).Replace(string(text)))
+}
+
+// read is the search of a scenario given as text.
+func read(t testing.TB, text string) stats.Search {
+	t.Helper()
+	path := filepath.Join(t.TempDir(), "scenario.toml")
+	if err := os.WriteFile(path, []byte(text), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	s, err := physics.Read(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s.Model
+}
 
 // count is one bin of s and b events per unit of luminosity, b known exactly.
 func count(s, b float64) stats.Search {
@@ -57,4 +86,13 @@ func testRunner(t testing.TB, c Config) *runner {
 		t.Fatal(err)
 	}
 	return newRunner(context.Background(), c)
+}
+
+func mixtureOf(t testing.TB, proposals []proposal) *mixture {
+	t.Helper()
+	m, err := testRunner(t, Config{}).newMixture(proposals)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return m
 }

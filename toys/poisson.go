@@ -6,25 +6,33 @@ import "math"
 type poisson struct {
 	mean float64
 
-	// Small means: the cumulative probabilities from count first on, and for
+	// From a table: the cumulative probabilities from count first on, and for
 	// each of len(guide) equal slices of [0, 1) where to begin the search.
 	first      int
 	cumulative []float64
 	guide      []int32
 
-	// Large means: constants of the transformed rejection.
+	// Without one: constants of the transformed rejection, for small means only
+	// the probability of nothing.
 	a, b, vr, inverseAlpha, logMean float64
+	nothing                         float64
 }
 
-// tableMean is the largest mean drawn from a table.
-const tableMean = 500
+const (
+	tableMean     = 500 // largest mean drawn from a table
+	rejectionMean = 10  // smallest mean of the transformed rejection
+	tableDraws    = 300 // draws from which a table pays
+)
 
-func newPoisson(mean float64) poisson {
+// newPoisson prepares so many draws.
+func newPoisson(mean float64, draws int) poisson {
 	p := poisson{mean: mean}
 	switch {
 	case mean == 0:
-	case mean <= tableMean:
+	case mean <= tableMean && draws >= tableDraws:
 		p.tabulate()
+	case mean < rejectionMean:
+		p.nothing = math.Exp(-mean)
 	default:
 		p.b = 0.931 + 2.53*math.Sqrt(mean)
 		p.a = -0.059 + 0.02483*p.b
@@ -81,8 +89,21 @@ func (p *poisson) draw(s *stream) float64 {
 			k++
 		}
 		return float64(p.first + int(k))
+	case p.mean < rejectionMean:
+		return p.invert(s)
 	}
 	return p.reject(s)
+}
+
+// invert is sequential search: Devroye, section X.3.3.
+func (p *poisson) invert(s *stream) float64 {
+	u, term, n := s.Float64(), p.nothing, 0.0
+	for u > term && term > 0 {
+		u -= term
+		n++
+		term *= p.mean / n
+	}
+	return n
 }
 
 // reject is the transformed rejection PTRS of Hörmann, Insurance: Mathematics

@@ -106,6 +106,11 @@ func reach(r *runner, search stats.Search) (*ReachResult, error) {
 		if err := r.toyGoals(search, result.Goals); err != nil {
 			return nil, err
 		}
+		for _, c := range r.checks {
+			if c.Plain > 0 {
+				result.Checks = append(result.Checks, c)
+			}
+		}
 	}
 	result.Cautions = cautions(result, engines, plateaus)
 	return result, nil

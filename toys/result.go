@@ -84,11 +84,23 @@ type Goal struct {
 	Toys       *GoalAnswer // nil with Config.Toys = 0
 }
 
+// Check compares weighted with plain toys of the null: those of all tails that
+// were thrown from the null itself pass a threshold as often as the weights say,
+// within the fluctuation of a Poisson count.
+type Check struct {
+	Z        float64 // the threshold, q0 >= Z²
+	Plain    int     // toys thrown from the null itself
+	Passing  int     // of them
+	Expected float64 // of them, by the weighted toys
+	Pull     float64 // (Passing - Expected) / standard error
+}
+
 // ReachResult is the expected reach of a search.
 type ReachResult struct {
 	Config   Config
 	Points   []Point
 	Goals    []Goal
+	Checks   []Check  // at 2σ and 3σ; none without toys
 	Notes    []string // how the run went, such as the toys that a precision took
 	Cautions []string // each once, only where it applies
 }

@@ -102,6 +102,9 @@ func arrange(app *cli.App, args []string) ([]string, error) {
 		return []string{"reach"}, nil
 	}
 	if slices.Contains(global, args[0]) {
+		if len(args) > 1 {
+			return nil, usagef("%s stands alone, %q is too many", args[0], args[1])
+		}
 		return args, nil
 	}
 	name := args[0]
@@ -148,6 +151,9 @@ func arrange(app *cli.App, args []string) ([]string, error) {
 		value, known := takesValue[option]
 		if !known {
 			return nil, usagef("%s has no option %s: %s", name, strings.SplitN(arg, "=", 2)[0], physics.Suggest("--"+option, options))
+		}
+		if option == "help" || option == "h" {
+			return []string{name, "--help"}, nil // whatever else is there
 		}
 		flags = append(flags, arg)
 		if value && !assigned {

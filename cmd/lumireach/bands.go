@@ -23,6 +23,9 @@ func bands(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
+	if err := checkOut(c); err != nil {
+		return err
+	}
 	s, err := scenario(c)
 	if err != nil {
 		return err
@@ -31,6 +34,7 @@ func bands(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
+	sayDemonstration(c)
 	bar := newProgress(c)
 	settings.Progress = bar.update
 	result, err := toys.Bands(c.Context, s.Model, settings)

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"os"
+	"path/filepath"
 	"slices"
 	"strconv"
 	"strings"
@@ -171,19 +173,19 @@ func format(c *cli.Context, known ...string) (string, error) {
 	return name, nil
 }
 
-// scenario reads the scenario named, or takes the demonstration and says so.
+// scenario reads the scenario named, or takes the demonstration.
 func scenario(c *cli.Context) (*physics.Scenario, error) {
 	if path := c.Args().First(); path != "" {
 		return physics.Read(path)
 	}
-	note(c, "no scenario given: this is the demonstration; lumireach yields --print-demo writes it out as a start for your own")
 	return physics.Demo(), nil
 }
 
-// note tells something on standard error, unless --quiet.
-func note(c *cli.Context, text string) {
-	if !c.Bool("quiet") {
-		fmt.Fprintln(c.App.ErrWriter, "lumireach:", text)
+// sayDemonstration notes on standard error that no scenario was given. It comes
+// after every check of the options: what is wrong with them stands alone there.
+func sayDemonstration(c *cli.Context) {
+	if c.Args().First() == "" && !c.Bool("quiet") {
+		fmt.Fprintln(c.App.ErrWriter, "lumireach: no scenario given: this is the demonstration; lumireach yields --print-demo writes it out as a start for your own")
 	}
 }
 
@@ -192,6 +194,22 @@ func headerOf(c *cli.Context, s *physics.Scenario) report.Header {
 		Command: c.Command.Name, Version: c.App.Version,
 		Title: s.Title, Source: s.Source, SHA256: s.SHA256, Unit: s.Unit,
 	}
+}
+
+// checkOut refuses a file of --out that could not be written, before the run.
+func checkOut(c *cli.Context) error {
+	path := c.String("out")
+	if path == "" {
+		return nil
+	}
+	if info, err := os.Stat(path); err == nil && !info.Mode().IsRegular() {
+		// To replace a device would take it away from everyone.
+		return usagef("--out %s is a directory or a device, must be a file", path)
+	}
+	if info, err := os.Stat(filepath.Dir(path)); err != nil || !info.IsDir() {
+		return usagef("--out %s: there is no directory %s", path, filepath.Dir(path))
+	}
+	return nil
 }
 
 // output writes a result to standard output or to the file of --out.

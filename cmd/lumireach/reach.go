@@ -23,6 +23,9 @@ func reach(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
+	if err := checkOut(c); err != nil {
+		return err
+	}
 	s, err := scenario(c)
 	if err != nil {
 		return err
@@ -37,6 +40,7 @@ func reach(c *cli.Context) error {
 	if !(settings.Mu > 0) {
 		return usagef("--mu is %v, must be above 0", settings.Mu)
 	}
+	sayDemonstration(c)
 	bar := newProgress(c)
 	settings.Progress = bar.update
 	result, err := toys.Reach(c.Context, s.Model, settings)

@@ -11,8 +11,9 @@ import (
 // replace writes a file whole or not at all: to a temporary neighbour first,
 // which then takes its name.
 func replace(path string, write func(io.Writer) error) (err error) {
-	if info, err := os.Stat(path); err == nil && info.IsDir() {
-		return usagef("--out %s is a directory, must be a file", path)
+	mode := os.FileMode(0o644)
+	if info, err := os.Stat(path); err == nil {
+		mode = info.Mode().Perm()
 	}
 	file, err := os.CreateTemp(filepath.Dir(path), "."+filepath.Base(path)+"-*")
 	if err != nil {
@@ -31,7 +32,7 @@ func replace(path string, write func(io.Writer) error) (err error) {
 	if err := buffer.Flush(); err != nil {
 		return fmt.Errorf("cannot write %s: %w", path, err)
 	}
-	if err := file.Chmod(0o644); err != nil {
+	if err := file.Chmod(mode); err != nil {
 		return fmt.Errorf("cannot write %s: %w", path, err)
 	}
 	if err := file.Sync(); err != nil {

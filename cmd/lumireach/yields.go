@@ -26,6 +26,9 @@ func yields(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
+	if err := checkOut(c); err != nil {
+		return err
+	}
 	if c.Bool("print-demo") {
 		if path := c.Args().First(); path != "" {
 			return usagef("--print-demo writes the demonstration and takes no scenario, not %q", path)
@@ -48,6 +51,10 @@ func yields(c *cli.Context) error {
 			return usagef("--luminosity is %v, must be above 0", luminosity)
 		}
 	}
+	if _, err := s.Model(luminosity); err != nil {
+		return err
+	}
+	sayDemonstration(c)
 	return output(c, func(w io.Writer) error {
 		if form == "json" {
 			return report.YieldsJSON(w, headerOf(c, s), s.Yields(luminosity))

@@ -3,7 +3,6 @@ package report
 import (
 	"encoding/csv"
 	"io"
-	"math"
 
 	"lumireach/toys"
 )
@@ -69,7 +68,7 @@ func BandsJSON(w io.Writer, h Header, r *toys.BandsResult) error {
 		Scenario: scenarioOf(h), Settings: settingsOf(r.Config),
 		Notes: h.Notes, Cautions: r.Cautions,
 	}
-	out.Settings.Mu = number(math.NaN()) // plays no part
+	out.Settings.Mu = nil // plays no part
 	for _, p := range r.Points {
 		point := bandsPointJSON{number(p.Luminosity), engines[exclusionJSON]{Asymptotic: exclusionOf(p.Formula, false)}}
 		if p.Toys != nil {
@@ -84,16 +83,19 @@ func BandsJSON(w io.Writer, h Header, r *toys.BandsResult) error {
 // BandsCSV writes one row for each luminosity and engine.
 func BandsCSV(w io.Writer, _ Header, r *toys.BandsResult) error {
 	c := csv.NewWriter(w)
-	header := append([]string{"luminosity", "engine"}, bandNames("exclusion.mu_up")...)
-	c.Write(append(header, bandNames("exclusion.mu_up_error")...))
+	header := []string{"luminosity", "engine"}
+	for _, name := range []string{"exclusion.mu_up", "exclusion.mu_up_error", "exclusion.mu_up_other"} {
+		header = append(header, bandNames(name)...)
+	}
+	c.Write(append(header, "exclusion.why"))
 	for _, p := range r.Points {
 		row := append(fields(true, p.Luminosity), "asymptotic")
-		row = append(row, bandFields(p.Formula.MuUp, true)...)
-		c.Write(append(row, bandFields(p.Formula.MuUpError, false)...))
+		row = append(row, exclusionFields(p.Formula, false)...)
+		c.Write(append(row, p.Formula.Why))
 		if x := p.Toys; x != nil {
 			row := append(fields(true, p.Luminosity), "toys")
-			row = append(row, bandFields(x.MuUp, true)...)
-			c.Write(append(row, bandFields(x.MuUpError, true)...))
+			row = append(row, exclusionFields(*x, true)...)
+			c.Write(append(row, x.Why))
 		}
 	}
 	c.Flush()

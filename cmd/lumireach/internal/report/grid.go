@@ -7,13 +7,17 @@ import (
 )
 
 // grid is a table of right-aligned cells, but for the first columns of words.
-// One rule stands under its header lines.
+// One rule stands under its header lines, in which a cell followed by across is
+// centred over both columns.
 type grid struct {
 	words int   // left-aligned columns
 	gaps  []int // spaces before each column
 	lines [][]string
 	rule  int // lines above the rule
 }
+
+// across continues the cell before it.
+const across = "\x00"
 
 func (g *grid) add(cells ...string) { g.lines = append(g.lines, cells) }
 
@@ -27,7 +31,9 @@ func (g *grid) write(w io.Writer) error {
 			if k == len(widths) {
 				widths = append(widths, 0)
 			}
-			widths[k] = max(widths[k], utf8.RuneCountInString(cell))
+			if cell != across && !(k+1 < len(line) && line[k+1] == across) {
+				widths[k] = max(widths[k], utf8.RuneCountInString(cell))
+			}
 		}
 	}
 	total := 0
@@ -41,13 +47,24 @@ func (g *grid) write(w io.Writer) error {
 		}
 		var row strings.Builder
 		for k, cell := range line {
-			space := strings.Repeat(" ", widths[k]-utf8.RuneCountInString(cell))
-			row.WriteString(strings.Repeat(" ", g.gap(k)))
-			if k < g.words {
-				row.WriteString(cell + space)
-			} else {
-				row.WriteString(space + cell)
+			if cell == across {
+				continue
 			}
+			row.WriteString(strings.Repeat(" ", g.gap(k)))
+			wide := widths[k]
+			wants := k+1 < len(line) && line[k+1] == across
+			if wants {
+				wide += g.gap(k+1) + widths[k+1]
+			}
+			space := max(0, wide-utf8.RuneCountInString(cell))
+			left := space
+			switch {
+			case wants:
+				left = (space + 1) / 2
+			case k < g.words:
+				left = 0
+			}
+			row.WriteString(strings.Repeat(" ", left) + cell + strings.Repeat(" ", space-left))
 		}
 		b.WriteString(strings.TrimRight(row.String(), " ") + "\n")
 	}

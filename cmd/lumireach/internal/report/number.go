@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"strconv"
+	"strings"
 )
 
 // dash stands where there is no number.
@@ -43,7 +44,8 @@ func plain(value float64, digits int) string {
 	if value == 0 {
 		return "0"
 	}
-	exponent := int(math.Floor(math.Log10(math.Abs(value))))
+	rounded := strconv.FormatFloat(value, 'e', digits-1, 64) // 9.996 to three digits has the exponent of 10.0
+	exponent, _ := strconv.Atoi(rounded[strings.IndexByte(rounded, 'e')+1:])
 	if exponent < -5 || exponent > 6 {
 		return strconv.FormatFloat(value, 'g', digits, 64)
 	}
@@ -65,7 +67,7 @@ func percent(p float64) string {
 		return dash
 	case p > 0 && p < 0.0005:
 		return "< 0.1 %"
-	case p < 1 && p > 0.9995:
+	case p < 1 && p >= 0.9995:
 		return "> 99.9 %"
 	}
 	return fixed(100*p, 1) + " %"

@@ -14,11 +14,12 @@ import (
 func ReachCSV(w io.Writer, _ Header, r *toys.ReachResult) error {
 	c := csv.NewWriter(w)
 	header := []string{"luminosity", "engine"}
-	for _, name := range []string{"discovery.z", "discovery.z_error", "exclusion.mu_up", "exclusion.mu_up_error"} {
+	for _, name := range []string{"discovery.z", "discovery.z_error", "discovery.z_at_least", "exclusion.mu_up", "exclusion.mu_up_error", "exclusion.mu_up_other"} {
 		header = append(header, bandNames(name)...)
 	}
 	header = append(header, "discovery.chance_3", "discovery.chance_3_error", "discovery.chance_5", "discovery.chance_5_error",
-		"discovery.toys", "discovery.failed_fits", "exclusion.toys", "exclusion.failed_fits")
+		"discovery.chance_of_one_event", "discovery.toys", "discovery.failed_fits", "exclusion.toys", "exclusion.failed_fits",
+		"discovery.why", "discovery.chance_why", "exclusion.why")
 	c.Write(header)
 	for _, p := range r.Points {
 		c.Write(csvRow(p.Luminosity, "asymptotic", p.Formula, false))
@@ -55,11 +56,18 @@ func csvRow(luminosity float64, engine string, a toys.Answer, thrown bool) []str
 	row := append(fields(true, luminosity), engine)
 	row = append(row, bandFields(d.Z, true)...)
 	row = append(row, bandFields(d.ZError, thrown)...)
-	row = append(row, bandFields(x.MuUp, true)...)
-	row = append(row, bandFields(x.MuUpError, thrown)...)
+	row = append(row, bandFields(d.ZAtLeast, true)...)
+	row = append(row, exclusionFields(x, thrown)...)
 	row = append(row, fields(true, d.Chance3)...)
 	row = append(row, fields(thrown, d.Chance3Error)...)
 	row = append(row, fields(true, d.Chance5)...)
 	row = append(row, fields(thrown, d.Chance5Error)...)
-	return append(row, fields(thrown, float64(d.Toys), float64(d.FailedFits), float64(x.Toys), float64(x.FailedFits))...)
+	row = append(row, fields(true, d.ChanceOne)...)
+	row = append(row, fields(thrown, float64(d.Toys), float64(d.FailedFits), float64(x.Toys), float64(x.FailedFits))...)
+	return append(row, d.Why, d.ChanceWhy, x.Why)
+}
+
+func exclusionFields(x toys.Exclusion, thrown bool) []string {
+	row := append(bandFields(x.MuUp, true), bandFields(x.MuUpError, thrown)...)
+	return append(row, bandFields(x.MuUpOther, true)...)
 }

@@ -33,15 +33,15 @@ type scenarioJSON struct {
 func scenarioOf(h Header) scenarioJSON { return scenarioJSON{h.Title, h.Source, h.SHA256, h.Unit} }
 
 type settingsJSON struct {
-	Seed       uint64 `json:"seed"`
-	Toys       int    `json:"toys"`
-	Mu         number `json:"mu"`
-	Confidence number `json:"confidence"`
-	Nuisances  string `json:"nuisances"`
+	Seed       uint64  `json:"seed"`
+	Toys       int     `json:"toys"`
+	Mu         *number `json:"mu,omitempty"`
+	Confidence number  `json:"confidence"`
+	Nuisances  string  `json:"nuisances"`
 }
 
 func settingsOf(c toys.Config) settingsJSON {
-	return settingsJSON{c.Seed, c.Toys, number(c.Mu), number(c.Confidence), "fixed"}
+	return settingsJSON{c.Seed, c.Toys, optional(c.Mu), number(c.Confidence), "fixed"}
 }
 
 type bandJSON struct {
@@ -56,15 +56,22 @@ func bandOf(b toys.Band) bandJSON {
 	return bandJSON{number(b.Minus2), number(b.Minus1), number(b.Median), number(b.Plus1), number(b.Plus2)}
 }
 
-// some is a band, or absent where it has no number at all.
-func some(b toys.Band) *bandJSON {
-	for _, v := range list(b) {
-		if !math.IsNaN(v) {
-			out := bandOf(b)
-			return &out
-		}
+// partJSON is a band of which quantiles without a number are absent.
+type partJSON struct {
+	Minus2 *number `json:"minus2,omitempty"`
+	Minus1 *number `json:"minus1,omitempty"`
+	Median *number `json:"median,omitempty"`
+	Plus1  *number `json:"plus1,omitempty"`
+	Plus2  *number `json:"plus2,omitempty"`
+}
+
+// some is what a band has of numbers, or absent where that is none.
+func some(b toys.Band) *partJSON {
+	out := partJSON{optional(b.Minus2), optional(b.Minus1), optional(b.Median), optional(b.Plus1), optional(b.Plus2)}
+	if out == (partJSON{}) {
+		return nil
 	}
-	return nil
+	return &out
 }
 
 // optional is a number, or absent where there is none.
@@ -79,7 +86,7 @@ func optional(v float64) *number {
 type discoveryJSON struct {
 	Z            bandJSON  `json:"z"`
 	ZError       *bandJSON `json:"z_error,omitempty"`
-	ZAtLeast     *bandJSON `json:"z_at_least,omitempty"`
+	ZAtLeast     *partJSON `json:"z_at_least,omitempty"`
 	Why          string    `json:"why,omitempty"`
 	Chance3      number    `json:"chance_3"`
 	Chance3Error *number   `json:"chance_3_error,omitempty"`
@@ -120,7 +127,7 @@ func discoveryOf(d toys.Discovery, thrown bool) discoveryJSON {
 type exclusionJSON struct {
 	MuUp       bandJSON  `json:"mu_up"`
 	MuUpError  *bandJSON `json:"mu_up_error,omitempty"`
-	MuUpOther  *bandJSON `json:"mu_up_other,omitempty"`
+	MuUpOther  *partJSON `json:"mu_up_other,omitempty"`
 	Why        string    `json:"why,omitempty"`
 	Toys       *int      `json:"toys,omitempty"`
 	FailedFits *int      `json:"failed_fits,omitempty"`
@@ -179,8 +186,17 @@ type reachJSON struct {
 	Settings settingsJSON     `json:"settings"`
 	Points   []reachPointJSON `json:"points"`
 	Goals    []reachGoalJSON  `json:"goals"`
+	Checks   []checkJSON      `json:"checks,omitempty"`
 	Notes    []string         `json:"notes,omitempty"`
 	Cautions []string         `json:"cautions"`
+}
+
+type checkJSON struct {
+	Z        number `json:"z"`
+	Plain    int    `json:"plain_toys"`
+	Passing  int    `json:"passing"`
+	Expected number `json:"expected"`
+	Pull     number `json:"pull"`
 }
 
 type reachPointJSON struct {
@@ -231,6 +247,9 @@ func ReachJSON(w io.Writer, h Header, r *toys.ReachResult) error {
 			goal.Toys = &t
 		}
 		out.Goals = append(out.Goals, goal)
+	}
+	for _, c := range r.Checks {
+		out.Checks = append(out.Checks, checkJSON{number(c.Z), c.Plain, c.Passing, number(c.Expected), number(c.Pull)})
 	}
 	return writeJSON(w, out)
 }

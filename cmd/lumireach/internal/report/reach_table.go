@@ -72,11 +72,11 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 	var reasons once
 	g := grid{gaps: []int{0, 4, 3, 4, 3, 4, 3}}
 	if withToys {
-		g.add("luminosity", "discovery Z", "median", "chance", "of 5σ", "limit on μ", "median")
+		g.add("luminosity", "median Z", across, "chance of 5σ", across, "median limit on μ", across)
 		g.add("["+h.Unit+"]", "formula", "toys", "formula", "toys", "formula", "toys")
 	} else {
-		g.add("luminosity", "discovery Z", "chance of 5σ", "limit on μ")
-		g.add("["+h.Unit+"]", "median", "", "median")
+		g.add("luminosity", "median Z", "chance of 5σ", "median limit on μ")
+		g.add("[" + h.Unit + "]")
 	}
 	g.header()
 	oneEvent := false
@@ -123,7 +123,12 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 	if err := goalsTable(h, r, &reasons).write(w); err != nil {
 		return err
 	}
-	return foot(w, append(reasons, h.Notes...), r.Cautions)
+	notes := append(reasons, h.Notes...)
+	for _, c := range r.Checks {
+		notes = append(notes, fmt.Sprintf("check of the weights: %d of %d plain background-only toys reach q0 of %s; the weighted ones expect %s",
+			c.Passing, c.Plain, luminosity(c.Z*c.Z), plain(c.Expected, 3)))
+	}
+	return foot(w, notes, r.Cautions)
 }
 
 func plainZ(z float64) string {

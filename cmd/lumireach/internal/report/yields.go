@@ -101,9 +101,9 @@ type channelJSON struct {
 	Bins               int            `json:"bins"`
 	Signals            []expectedJSON `json:"signals"`
 	Backgrounds        []expectedJSON `json:"backgrounds"`
-	Best               *intervalJSON  `json:"best_interval"`
-	SmallestBackground number         `json:"smallest_background_bin"`
-	SmallestTotal      number         `json:"smallest_bin"`
+	Best               *intervalJSON  `json:"best_interval,omitempty"`
+	SmallestBackground *number        `json:"smallest_background_bin,omitempty"`
+	SmallestTotal      *number        `json:"smallest_bin,omitempty"`
 }
 
 type expectedJSON struct {
@@ -113,12 +113,12 @@ type expectedJSON struct {
 }
 
 type intervalJSON struct {
-	FirstBin   int    `json:"first_bin"`
-	Bins       int    `json:"bins"`
-	Low        number `json:"low"`
-	High       number `json:"high"`
-	Signal     number `json:"signal"`
-	Background number `json:"background"`
+	FirstBin   int     `json:"first_bin"`
+	Bins       int     `json:"bins"`
+	Low        *number `json:"low,omitempty"`
+	High       *number `json:"high,omitempty"`
+	Signal     number  `json:"signal"`
+	Background number  `json:"background"`
 }
 
 type parameterJSON struct {
@@ -146,10 +146,10 @@ func YieldsJSON(w io.Writer, h Header, y physics.Yields) error {
 		channel := channelJSON{
 			Name: c.Name, Unit: c.Unit, Window: c.Window, Bins: c.Bins,
 			Signals: expectedOf(c.Signals), Backgrounds: expectedOf(c.Backgrounds),
-			SmallestBackground: number(c.SmallestBackground), SmallestTotal: number(c.SmallestTotal),
+			SmallestBackground: optional(c.SmallestBackground), SmallestTotal: optional(c.SmallestTotal),
 		}
 		if b := c.Best; b != nil {
-			channel.Best = &intervalJSON{b.FirstBin, b.Bins, number(b.Low), number(b.High), number(b.Signal), number(b.Background)}
+			channel.Best = &intervalJSON{b.FirstBin, b.Bins, optional(b.Low), optional(b.High), number(b.Signal), number(b.Background)}
 		}
 		out.Channels = append(out.Channels, channel)
 	}

@@ -4,6 +4,7 @@ go 1.26.0
 
 require (
 	github.com/pelletier/go-toml/v2 v2.4.3
+	github.com/rogpeppe/go-internal v1.16.0
 	github.com/urfave/cli/v2 v2.27.7
 	github.com/vbauerster/mpb/v8 v8.16.2
 	golang.org/x/exp v0.0.0-20261113113407-e3970619a1a4

@@ -129,14 +129,18 @@ func (r *runner) measureExclusion(e *stats.Engine, luminosity float64, toys int)
 }
 
 // excluded is the probability, without signal, of CLs <= alpha at the first
-// node.
+// node. CLs rises as q̃ falls, but for the noise of the toys, which can carry it
+// across alpha more than once: the middle of those places is taken.
 func (s *jointSample) excluded(alpha float64, multiplicity []float64, fails int) float64 {
 	w := s.walk(0, multiplicity, fails)
-	excluded := 0.0
+	first, last, above := 0.0, 0.0, false
 	for w.next() {
+		if above = above || w.cls() > alpha; !above {
+			first = w.sum0 / w.total0
+		}
 		if w.cls() <= alpha {
-			excluded = w.sum0 / w.total0
+			last = w.sum0 / w.total0
 		}
 	}
-	return excluded
+	return (first + last) / 2
 }

@@ -55,19 +55,19 @@ func csvRow(luminosity float64, engine string, a toys.Answer, thrown bool) []str
 	d, x := a.Discovery, a.Exclusion
 	row := append(fields(true, luminosity), engine)
 	row = append(row, bandFields(d.Z, true)...)
-	row = append(row, bandFields(d.ZError, thrown)...)
+	row = append(row, bandFields(errorsOf(d.Z, d.ZError), thrown)...)
 	row = append(row, bandFields(d.ZAtLeast, true)...)
 	row = append(row, exclusionFields(x, thrown)...)
 	row = append(row, fields(true, d.Chance3)...)
-	row = append(row, fields(thrown, d.Chance3Error)...)
+	row = append(row, fields(thrown, errorOf(d.Chance3, d.Chance3Error))...)
 	row = append(row, fields(true, d.Chance5)...)
-	row = append(row, fields(thrown, d.Chance5Error)...)
+	row = append(row, fields(thrown, errorOf(d.Chance5, d.Chance5Error))...)
 	row = append(row, fields(true, d.ChanceOne)...)
 	row = append(row, fields(thrown, float64(d.Toys), float64(d.FailedFits), float64(x.Toys), float64(x.FailedFits))...)
 	return append(row, d.Why, d.ChanceWhy, x.Why)
 }
 
 func exclusionFields(x toys.Exclusion, thrown bool) []string {
-	row := append(bandFields(x.MuUp, true), bandFields(x.MuUpError, thrown)...)
+	row := append(bandFields(x.MuUp, true), bandFields(errorsOf(x.MuUp, x.MuUpError), thrown)...)
 	return append(row, bandFields(x.MuUpOther, true)...)
 }

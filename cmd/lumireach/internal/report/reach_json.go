@@ -74,6 +74,21 @@ func some(b toys.Band) *partJSON {
 	return &out
 }
 
+// errorOf is the error of a value: none where there is no value.
+func errorOf(value, err float64) float64 {
+	if math.IsNaN(value) {
+		return value
+	}
+	return err
+}
+
+func errorsOf(b, errs toys.Band) toys.Band {
+	return toys.Band{
+		Minus2: errorOf(b.Minus2, errs.Minus2), Minus1: errorOf(b.Minus1, errs.Minus1), Median: errorOf(b.Median, errs.Median),
+		Plus1: errorOf(b.Plus1, errs.Plus1), Plus2: errorOf(b.Plus2, errs.Plus2),
+	}
+}
+
 // optional is a number, or absent where there is none.
 func optional(v float64) *number {
 	if math.IsNaN(v) {
@@ -113,8 +128,8 @@ func discoveryOf(d toys.Discovery, thrown bool) discoveryJSON {
 		ChanceOne: optional(d.ChanceOne),
 	}
 	if thrown {
-		errors := bandOf(d.ZError)
-		chance3, chance5 := number(d.Chance3Error), number(d.Chance5Error)
+		errors := bandOf(errorsOf(d.Z, d.ZError))
+		chance3, chance5 := number(errorOf(d.Chance3, d.Chance3Error)), number(errorOf(d.Chance5, d.Chance5Error))
 		out.ZError, out.Chance3Error, out.Chance5Error = &errors, &chance3, &chance5
 		out.Toys, out.NullToys, out.FailedFits = &d.Toys, &d.NullToys, &d.FailedFits
 		if d.Tail != nil {
@@ -136,7 +151,7 @@ type exclusionJSON struct {
 func exclusionOf(x toys.Exclusion, thrown bool) exclusionJSON {
 	out := exclusionJSON{MuUp: bandOf(x.MuUp), MuUpOther: some(x.MuUpOther), Why: x.Why}
 	if thrown {
-		errors := bandOf(x.MuUpError)
+		errors := bandOf(errorsOf(x.MuUp, x.MuUpError))
 		out.MuUpError = &errors
 		out.Toys, out.FailedFits = &x.Toys, &x.FailedFits
 	}
@@ -171,7 +186,11 @@ func goalOf(g toys.GoalAnswer, thrown bool) goalJSON {
 		BeyondList: g.BeyondList, Plateau: number(g.Plateau),
 	}
 	if thrown {
-		errors := [3]number{number(g.Error), number(g.Error80), number(g.Error90)}
+		errors := [3]number{
+			number(errorOf(g.Luminosity, g.Error)),
+			number(errorOf(g.Luminosity80, g.Error80)),
+			number(errorOf(g.Luminosity90, g.Error90)),
+		}
 		out.Error, out.Error80, out.Error90 = &errors[0], &errors[1], &errors[2]
 		out.Toys, out.FailedFits = &g.Toys, &g.FailedFits
 	}

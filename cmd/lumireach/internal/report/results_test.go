@@ -97,7 +97,7 @@ func reachWithGaps() *toys.ReachResult {
 	first.Discovery = toys.Discovery{Z: none(), ZAtLeast: none(), Chance3: nan, Chance5: nan, ChanceOne: 0.864664, Why: clean, ChanceWhy: clean}
 	firstToys := thrown()
 	firstToys.Discovery = toys.Discovery{
-		Z: none(), ZError: none(), ZAtLeast: none(), Chance3: nan, Chance3Error: nan, Chance5: nan, Chance5Error: nan,
+		Z: none(), ZAtLeast: none(), Chance3: nan, Chance5: nan,
 		ChanceOne: 0.864664, Why: clean, ChanceWhy: clean,
 	}
 	firstToys.Exclusion.MuUpOther = toys.Band{Minus2: 0.39, Minus1: nan, Median: 0.912, Plus1: nan, Plus2: nan}
@@ -108,7 +108,7 @@ func reachWithGaps() *toys.ReachResult {
 	secondToys := thrown()
 	d := &secondToys.Discovery
 	d.Z.Median, d.Z.Plus1, d.Z.Plus2 = nan, nan, nan
-	d.ZError.Median, d.ZError.Plus1, d.ZError.Plus2 = nan, nan, nan
+	d.ZError.Median, d.ZError.Plus1, d.ZError.Plus2 = 0, 0, 0
 	d.ZAtLeast = toys.Band{Minus2: nan, Minus1: nan, Median: 4.6789, Plus1: 4.6789, Plus2: 4.6789}
 	d.Why = "the background-only toys reach 4.7 standard deviations"
 	d.Chance5, d.Chance5Error, d.ChanceWhy = nan, nan, "5 standard deviations lie beyond the tail of the toys"
@@ -132,7 +132,7 @@ func reachWithGaps() *toys.ReachResult {
 					Why80: "the toys do not reach so far", Why90: "the toys do not reach so far", Toys: 3000}},
 			{Name: "exclusion", Confidence: 0.9,
 				Formula: toys.GoalAnswer{Luminosity: 12, Luminosity80: 19, Luminosity90: 25, Plateau: nan},
-				Toys: &toys.GoalAnswer{Luminosity: nan, Error: nan, Luminosity80: nan, Error80: nan, Luminosity90: nan, Error90: nan, Plateau: nan,
+				Toys: &toys.GoalAnswer{Luminosity: nan, Luminosity80: nan, Luminosity90: nan, Plateau: nan,
 					Why: "every fit failed", Why80: "every fit failed", Why90: "every fit failed", Toys: 600, FailedFits: 600}},
 		},
 		Cautions: cautions,

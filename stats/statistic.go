@@ -15,32 +15,10 @@ func (f *Fitter) Q0(d *Data, near float64) (float64, Status) {
 		return 0, Converged
 	}
 	null := f.At(d, 0)
-	switch {
-	case null.Status == Impossible:
+	if null.Status == Impossible {
 		return posInf, Converged
-	case null.Status != Converged:
-		return math.NaN(), null.Status
 	}
-	if null.Deviance < free.Deviance {
-		// The free fit sits at a lower maximum of the likelihood than μ = 0.
-		f.variables = append(append(f.variables[:0], 0), f.engine.all...)
-		if free = f.minimise(d, 0, posInf, false); free.Status != Converged {
-			return math.NaN(), free.Status
-		}
-	}
-	return difference(null.Deviance, free.Deviance)
-}
-
-// unconverged is the negative value of a test statistic, of either sign
-// rounding aside, that betrays a fit short of its minimum.
-const unconverged = -1e-6
-
-func difference(constrained, free float64) (float64, Status) {
-	q := constrained - free
-	if q < unconverged {
-		return math.NaN(), Failed
-	}
-	return math.Max(0, q), Converged
+	return f.difference(d, null, free, posInf)
 }
 
 // QTilde is the upper-limit statistic of d at mu > 0, D(μ) - min D(0 <= μ' <= μ),
@@ -63,15 +41,29 @@ func (f *Fitter) QTilde(d *Data, mu float64, free Fit) (float64, Status) {
 			return 0, Converged
 		}
 	}
-	at := f.At(d, mu)
-	if at.Status != Converged {
-		return math.NaN(), at.Status
+	return f.difference(d, f.At(d, mu), free, mu)
+}
+
+// unconverged is the negative value of a test statistic, rounding aside, that
+// betrays a fit short of its minimum.
+const unconverged = -1e-6
+
+// difference is the deviance of the fit at fixed μ just made less that of a fit
+// with 0 <= μ <= maxMu, which is made again from there where it sits at a lower
+// maximum of the likelihood.
+func (f *Fitter) difference(d *Data, fixed, free Fit, maxMu float64) (float64, Status) {
+	if fixed.Status != Converged {
+		return math.NaN(), fixed.Status
 	}
-	if at.Deviance < free.Deviance {
+	if fixed.Deviance < free.Deviance {
 		f.variables = append(append(f.variables[:0], 0), f.engine.all...)
-		if free = f.minimise(d, 0, mu, false); free.Status != Converged {
+		if free = f.minimise(d, 0, maxMu, false); free.Status != Converged {
 			return math.NaN(), free.Status
 		}
 	}
-	return difference(at.Deviance, free.Deviance)
+	q := fixed.Deviance - free.Deviance
+	if q < unconverged {
+		return math.NaN(), Failed
+	}
+	return math.Max(0, q), Converged
 }

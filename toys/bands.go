@@ -12,16 +12,7 @@ import (
 // confidence asked for, by the asymptotic formulas and, where toys are asked
 // for, by pseudo-experiments. Cancelling ctx ends it with ctx's error.
 func Bands(ctx context.Context, search stats.Search, config Config) (*BandsResult, error) {
-	if err := config.complete(); err != nil {
-		return nil, err
-	}
-	return precisely(ctx, config, func(ctx context.Context, c Config) (*BandsResult, float64, error) {
-		result, err := bands(newRunner(ctx, c), search)
-		if err != nil {
-			return nil, 0, err
-		}
-		return result, result.worst(), nil
-	}, func(r *BandsResult, note string) { r.Notes = append(r.Notes, note) })
+	return precisely(ctx, config, func(r *runner) (*BandsResult, error) { return bands(r, search) })
 }
 
 func bands(r *runner, search stats.Search) (*BandsResult, error) {
@@ -53,6 +44,8 @@ func bands(r *runner, search stats.Search) (*BandsResult, error) {
 	result.Cautions = bandsCautions(result, engines)
 	return result, nil
 }
+
+func (r *BandsResult) note(text string) { r.Notes = append(r.Notes, text) }
 
 // worst is the largest relative error of the five limits.
 func (r *BandsResult) worst() float64 {

@@ -13,51 +13,59 @@ const (
 	mostToys  = 50_000_000 // where a run by precision gives up
 )
 
+// result is what a run gives.
+type result interface {
+	worst() float64 // largest relative error
+	note(string)    // adds how the run went
+}
+
 // precisely runs once with Config.Toys or, where a precision is asked for, again
 // and again with more toys until the worst relative error is below it or the
-// time is over. note tells on the result how it went.
-func precisely[T any](ctx context.Context, c Config, run func(context.Context, Config) (T, float64, error), note func(T, string)) (T, error) {
-	if c.Precision == 0 {
-		result, _, err := run(ctx, c)
-		return result, err
-	}
+// time is over.
+func precisely[T result](ctx context.Context, c Config, run func(*runner) (T, error)) (T, error) {
 	var best T
-	reached, thrown := math.NaN(), 0
+	if err := c.complete(); err != nil {
+		return best, err
+	}
+	if c.Precision == 0 {
+		return run(newRunner(ctx, c))
+	}
 	began := time.Now()
-	c.Toys = firstToys
-	say := func(done string) (T, error) {
-		note(best, fmt.Sprintf("%s: known to %.2g of itself or better; --toys %d gives the same again", done, reached, thrown))
+	thrown := 0
+	done := func(why string) (T, error) {
+		best.note(fmt.Sprintf("%s: known to %.2g of itself or better; --toys %d gives the same again", why, best.worst(), thrown))
 		return best, nil
 	}
-	for {
+	for c.Toys = firstToys; ; {
 		attempt, cancel := ctx, context.CancelFunc(func() {})
 		if c.Within > 0 {
 			attempt, cancel = context.WithDeadline(ctx, began.Add(c.Within))
 		}
 		start := time.Now()
-		result, worst, err := run(attempt, c)
+		result, err := run(newRunner(attempt, c))
 		cancel()
 		switch {
 		case errors.Is(err, context.DeadlineExceeded) && ctx.Err() == nil:
-			if math.IsNaN(reached) {
+			if thrown == 0 {
 				return best, fmt.Errorf("%v is too short for %d toys, the fewest of a run by precision", c.Within, firstToys)
 			}
-			return say("the time is over")
+			return done("the time is over")
 		case err != nil:
 			return best, err
 		}
-		best, reached, thrown = result, worst, c.Toys
+		best, thrown = result, c.Toys
+		worst := best.worst()
 		if worst <= c.Precision {
-			return say("the precision asked for is reached")
+			return done("the precision asked for is reached")
 		}
 		// Errors fall with the square root; a tenth more, not to fall just short.
 		growth := math.Max(1.3, math.Min(16, 1.1*math.Pow(worst/c.Precision, 2)))
 		more := int(growth * float64(c.Toys))
 		if more > mostToys {
-			return say(fmt.Sprintf("more than %d toys would be needed", mostToys))
+			return done(fmt.Sprintf("more than %d toys would be needed", mostToys))
 		}
-		if c.Within > 0 && time.Since(began)+time.Duration(float64(time.Since(start))*float64(more)/float64(c.Toys)) > c.Within {
-			return say("the time allows no more")
+		if c.Within > 0 && time.Since(began)+time.Duration(float64(time.Since(start))*growth) > c.Within {
+			return done("the time allows no more")
 		}
 		c.Toys = more
 	}
@@ -70,6 +78,8 @@ func relative(err, value, least float64) float64 {
 	}
 	return err / math.Max(least, math.Abs(value))
 }
+
+func (r *ReachResult) note(text string) { r.Notes = append(r.Notes, text) }
 
 // worst is the largest relative error of the medians and goals.
 func (r *ReachResult) worst() float64 {

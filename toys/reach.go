@@ -14,16 +14,7 @@ import (
 // asymptotic formulas and, where toys are asked for, by pseudo-experiments.
 // Cancelling ctx ends it with ctx's error.
 func Reach(ctx context.Context, search stats.Search, config Config) (*ReachResult, error) {
-	if err := config.complete(); err != nil {
-		return nil, err
-	}
-	return precisely(ctx, config, func(ctx context.Context, c Config) (*ReachResult, float64, error) {
-		result, err := reach(newRunner(ctx, c), search)
-		if err != nil {
-			return nil, 0, err
-		}
-		return result, result.worst(), nil
-	}, func(r *ReachResult, note string) { r.Notes = append(r.Notes, note) })
+	return precisely(ctx, config, func(r *runner) (*ReachResult, error) { return reach(r, search) })
 }
 
 // complete checks a Config and puts in what its zero values stand for.

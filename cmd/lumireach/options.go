@@ -93,6 +93,14 @@ func config(c *cli.Context, s *physics.Scenario) (toys.Config, error) {
 	if !(out.Confidence > 0.5 && out.Confidence < 1) {
 		return out, usagef("--confidence is %v, must lie between 0.5 and 1, such as 0.95", out.Confidence)
 	}
+	if c.IsSet("mu") {
+		if out.Mu, err = number(c, "mu"); err != nil {
+			return out, err
+		}
+		if !(out.Mu > 0) {
+			return out, usagef("--mu is %v, must be above 0", out.Mu)
+		}
+	}
 	if c.IsSet("precision") {
 		if c.IsSet("toys") {
 			return out, usagef("--precision and --toys stand together: give one of them")

@@ -37,7 +37,7 @@ func BandsTable(w io.Writer, h Header, r *toys.BandsResult) error {
 	if err := g.write(w); err != nil {
 		return err
 	}
-	return foot(w, append(reasons, h.Notes...), r.Cautions)
+	return foot(w, append(reasons, r.Notes...), r.Cautions)
 }
 
 // list is a band from its lower end.
@@ -66,7 +66,7 @@ func BandsJSON(w io.Writer, h Header, r *toys.BandsResult) error {
 	out := bandsJSON{
 		Format: format, Command: h.Command, Version: h.Version,
 		Scenario: scenarioOf(h), Settings: settingsOf(r.Config),
-		Notes: h.Notes, Cautions: r.Cautions,
+		Notes: r.Notes, Cautions: r.Cautions,
 	}
 	out.Settings.Mu = nil // plays no part
 	for _, p := range r.Points {

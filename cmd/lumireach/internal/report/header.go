@@ -8,7 +8,6 @@ type Header struct {
 	Source  string // path of the scenario as given, or "demonstration"
 	SHA256  string // of the scenario's bytes
 	Unit    string // of luminosity, a label
-	Notes   []string
 }
 
 // demonstration is the Source of the embedded scenario.

@@ -239,7 +239,7 @@ func ReachJSON(w io.Writer, h Header, r *toys.ReachResult) error {
 		Format: format, Command: h.Command, Version: h.Version,
 		Scenario: scenarioOf(h),
 		Settings: settingsOf(r.Config),
-		Notes:    h.Notes,
+		Notes:    r.Notes,
 		Cautions: r.Cautions,
 	}
 	for _, p := range r.Points {

@@ -123,7 +123,7 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 	if err := goalsTable(h, r, &reasons).write(w); err != nil {
 		return err
 	}
-	notes := append(reasons, h.Notes...)
+	notes := append(reasons, r.Notes...)
 	for _, c := range r.Checks {
 		notes = append(notes, fmt.Sprintf("check of the weights: %d of %d plain background-only toys reach q0 of %s; the weighted ones expect %s",
 			c.Passing, c.Plain, luminosity(c.Z*c.Z), plain(c.Expected, 3)))

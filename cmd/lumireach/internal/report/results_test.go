@@ -20,13 +20,14 @@ func header(command string) Header {
 	return Header{
 		Command: command, Version: "1.2.3", Title: "Slow pairs in the Tarnvik cellar", Source: "pairs/cellar.toml",
 		SHA256: "00112233445566778899aabbccddeeff00112233445566778899aabbccddeeff", Unit: "kg·d",
-		Notes: []string{"precision 0.02 asked for, 0.017 reached with 6400 toys; the median limit at luminosity 300 was the last to settle, after four rounds"},
 	}
 }
 
 func reaches() map[string]*toys.ReachResult {
 	return map[string]*toys.ReachResult{"full": fullReach(), "gaps": reachWithGaps(), "formulas": formulasOnly()}
 }
+
+var notes = []string{"precision 0.02 asked for, 0.017 reached with 6400 toys; the median limit at luminosity 300 was the last to settle, after four rounds"}
 
 var cautions = []string{
 	"Expected, not observed.",
@@ -86,7 +87,7 @@ func fullReach() *toys.ReachResult {
 			{Z: 2, Plain: 5000, Passing: 121, Expected: 114.2, Pull: 0.64},
 			{Z: 3, Plain: 5000, Passing: 6, Expected: 6.75, Pull: -0.29},
 		},
-		Cautions: cautions,
+		Notes: notes, Cautions: cautions,
 	}
 }
 
@@ -135,7 +136,7 @@ func reachWithGaps() *toys.ReachResult {
 				Toys: &toys.GoalAnswer{Luminosity: nan, Luminosity80: nan, Luminosity90: nan, Plateau: nan,
 					Why: "every fit failed", Why80: "every fit failed", Why90: "every fit failed", Toys: 600, FailedFits: 600}},
 		},
-		Cautions: cautions,
+		Notes: notes, Cautions: cautions,
 	}
 }
 
@@ -157,7 +158,7 @@ func formulasOnly() *toys.ReachResult {
 func bands() map[string]*toys.BandsResult {
 	out := map[string]*toys.BandsResult{}
 	for name, r := range reaches() {
-		b := &toys.BandsResult{Config: r.Config, Cautions: r.Cautions}
+		b := &toys.BandsResult{Config: r.Config, Notes: r.Notes, Cautions: r.Cautions}
 		for _, p := range r.Points {
 			point := toys.BandsPoint{Luminosity: p.Luminosity, Formula: p.Formula.Exclusion}
 			if p.Toys != nil {

@@ -57,3 +57,39 @@ func BenchmarkToys(b *testing.B) {
 		})
 	}
 }
+
+// BenchmarkTail reports how many weighted toys a tail takes to 5 %: 5σ alone, aimed
+// at, and the worst of all from 1σ to 6σ.
+func BenchmarkTail(b *testing.B) {
+	const toys = 40000
+	for _, s := range benches {
+		e := engine(b, scenario(b, s.file), 1)
+		for _, kind := range []struct {
+			name   string
+			wanted span
+			tails  []float64
+		}{{"5", span{4.75, 5.25}, []float64{5}}, {"1-6", span{1, 6}, []float64{1, 2, 3, 4, 5, 6}}} {
+			b.Run(s.name+"/"+kind.name, func(b *testing.B) {
+				worst := 0.0
+				seed := uint64(0)
+				runs := 0.0
+				for b.Loop() {
+					seed++
+					r := testRunner(b, Config{Toys: toys, Seed: seed})
+					null, err := r.nullOnce(e, 1, kind.wanted, toys, 1)
+					if err != nil {
+						b.Fatal(err)
+					}
+					most := 0.0
+					for _, z := range kind.tails {
+						p := null.p(z * z)
+						most = math.Max(most, math.Pow(p.err/p.p/0.05, 2)*float64(null.total))
+					}
+					worst += most
+					runs++
+				}
+				b.ReportMetric(worst/runs, "toys-to-5%")
+			})
+		}
+	}
+}

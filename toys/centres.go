@@ -22,19 +22,21 @@ type level struct{ z, weight float64 }
 
 // levels cover a span at a spacing of no more than one, and go on two beyond
 // it, more thinly, for the toys that fluctuate down from there. The conventions
-// 3σ and 5σ always have a level near them.
+// 3σ and 5σ always have a level near them. A level weighs as its z, for the toys
+// that a tail takes to one precision grow with it.
 func (s span) levels() []level {
 	from, to := math.Max(1, s.from), math.Min(math.Max(1.5, s.to), largestZ-2)
 	from = math.Min(from, to-0.5)
 	steps := math.Ceil(to - from)
 	var out []level
 	for k := 0.0; k <= steps; k++ {
-		out = append(out, level{from + (to-from)*k/steps, 1})
+		z := from + (to-from)*k/steps
+		out = append(out, level{z, z})
 	}
-	out = append(out, level{to + 1, 0.5}, level{to + 2, 0.5})
+	out = append(out, level{to + 1, (to + 1) / 2}, level{to + 2, (to + 2) / 4})
 	for _, z := range conventions {
 		if z < from-0.5 || z > to+0.5 {
-			out = append(out, level{z, 0.5})
+			out = append(out, level{z, z / 2})
 		}
 	}
 	sort.Slice(out, func(i, j int) bool { return out[i].z < out[j].z })

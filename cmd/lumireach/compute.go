@@ -49,6 +49,9 @@ func compute[R any](c *cli.Context, run func(context.Context, stats.Search, toys
 	if err != nil {
 		return err
 	}
+	if err := checkOut(c); err != nil {
+		return err
+	}
 	s, err := scenario(c)
 	if err != nil {
 		return err
@@ -57,6 +60,7 @@ func compute[R any](c *cli.Context, run func(context.Context, stats.Search, toys
 	if err != nil {
 		return err
 	}
+	sayDemonstration(c)
 	bar := newProgress(c)
 	settings.Progress = bar.update
 	result, err := run(c.Context, s.Model, settings)

@@ -21,7 +21,7 @@ var mayImport = map[string][]string{
 	"lumireach/physics":                       {"lumireach/stats"},
 	"lumireach/toys":                          {"lumireach/stats"},
 	"lumireach/cmd/lumireach/internal/report": {"lumireach/physics", "lumireach/toys"},
-	"lumireach/cmd/lumireach":                 {"lumireach/physics", "lumireach/toys", "lumireach/cmd/lumireach/internal/report"},
+	"lumireach/cmd/lumireach":                 {"lumireach/stats", "lumireach/physics", "lumireach/toys", "lumireach/cmd/lumireach/internal/report"},
 }
 
 // generator is deprecated: one file alone imports it, which keeps it replaceable.

@@ -15,8 +15,8 @@ type Config struct {
 	// Workers bounds the goroutines. It never changes a result. Zero means
 	// all cores.
 	Workers int
-	// Mu is the signal strength that is hoped for, of discovery only. Zero
-	// means 1.
+	// Mu is the signal strength that is hoped for, of discovery only, from
+	// LeastMu to MostMu. Zero means 1.
 	Mu float64
 	// Confidence of limits, between 0.5 and 1. Zero means 0.95.
 	Confidence float64
@@ -40,3 +40,10 @@ type Progress struct {
 // MinToys is the smallest sample that order-statistic errors of a 2σ quantile
 // can be taken from.
 const MinToys = 200
+
+// A signal strength is a factor about 1: beyond these bounds the rates are what
+// is wrong.
+const (
+	LeastMu = 1e-6
+	MostMu  = 1e5
+)

@@ -88,7 +88,7 @@ func (r *runner) plannedGoals(goals []Goal) int64 {
 
 func (r *runner) toyGoal(search stats.Search, g *Goal) (*GoalAnswer, error) {
 	n := math.NaN()
-	answer := &GoalAnswer{Luminosity: n, Luminosity80: n, Luminosity90: n, Plateau: n}
+	answer := &GoalAnswer{Luminosity: n, Error: n, Luminosity80: n, Error80: n, Luminosity90: n, Error90: n, Plateau: n}
 	answer.Why, answer.Why80, answer.Why90 = g.Formula.Why, g.Formula.Why80, g.Formula.Why90
 	roots := g.Formula.roots()
 
@@ -192,7 +192,7 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 		used = append(used, i)
 	}
 	if len(x) < 3 {
-		return math.NaN(), 0, "too few luminosities near the formula's answer at which the toys give a number"
+		return math.NaN(), math.NaN(), "too few luminosities near the formula's answer at which the toys give a number"
 	}
 	intercept, slope := line(x, d, sigma)
 	chi2 := 0.0
@@ -202,7 +202,7 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 	}
 	// Refused at 1 in 1000: nine lines are fitted in one run.
 	if p := mathext.GammaIncRegComp(float64(len(x)-2)/2, chi2/2); p < 1e-3 {
-		return math.NaN(), 0, "the toys' answer moves in steps with luminosity: there is no single luminosity for this goal"
+		return math.NaN(), math.NaN(), "the toys' answer moves in steps with luminosity: there is no single luminosity for this goal"
 	}
 
 	l, solved := search.Luminosity(func(e *stats.Engine) (float64, error) {
@@ -213,12 +213,12 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 		return f + a.offset[k] + intercept - a.target[k], nil
 	}, root/2, 2*root)
 	if solved != nil {
-		return math.NaN(), 0, fmt.Sprintf("the toys differ too much from the formula: %v", solved)
+		return math.NaN(), math.NaN(), fmt.Sprintf("the toys differ too much from the formula: %v", solved)
 	}
 	// One step more: the correction at the root found, not at the formula's.
 	rate, failure := steepness(search, a, l)
 	if failure != nil || !(rate+slope > 0) {
-		return math.NaN(), 0, "the toys' answer does not grow with luminosity"
+		return math.NaN(), math.NaN(), "the toys' answer does not grow with luminosity"
 	}
 	shift := slope * math.Log(l/root)
 	l *= math.Exp(-shift / (rate + slope))

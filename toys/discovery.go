@@ -130,7 +130,8 @@ func (r *runner) discover(e *stats.Engine, luminosity float64, formula Band) (Di
 func noDiscovery(why string, one float64) Discovery {
 	n := math.NaN()
 	return Discovery{
-		Z: noBand(), ZAtLeast: noBand(), Chance3: n, Chance5: n, ChanceOne: one,
+		Z: noBand(), ZError: noBand(), ZAtLeast: noBand(),
+		Chance3: n, Chance3Error: n, Chance5: n, Chance5Error: n, ChanceOne: one,
 		Why: why, ChanceWhy: why,
 	}
 }
@@ -146,16 +147,16 @@ func summarise(signal *ranked, null *tail) Discovery {
 	}
 	if len(signal.toys) == 0 || len(null.toys) == 0 {
 		none := noDiscovery("every fit failed", math.NaN())
-		d.Z, d.Chance3, d.Chance5, d.Why, d.ChanceWhy = none.Z, none.Chance3, none.Chance5, none.Why, none.Why
-		return d
+		none.Toys, none.NullToys, none.FailedFits = d.Toys, d.NullToys, d.FailedFits
+		return none
 	}
-	why := fmt.Sprintf("the background-only toys reach %.2g standard deviations", d.Tail.ReachesZ)
+	why := fmt.Sprintf("%d background-only toys are trusted to %.2g standard deviations", null.total, d.Tail.ReachesZ)
 	var z, zError, atLeast [5]float64
 	for i, u := range quantiles {
 		value, err, ok := null.z(signal.quantile(u))
 		z[i], atLeast[i] = value, math.NaN()
 		if !ok {
-			atLeast[i] = d.Tail.ReachesZ
+			zError[i], atLeast[i] = math.NaN(), d.Tail.ReachesZ
 			d.Why = why
 			continue
 		}
@@ -193,7 +194,7 @@ func chance(signal *ranked, null *tail, z float64) (p, err float64) {
 	probability := stats.PValue(z)
 	threshold, ok := null.threshold(probability)
 	if !ok {
-		return math.NaN(), 0
+		return math.NaN(), math.NaN()
 	}
 	n := len(signal.toys)
 	above := func(threshold float64) int {

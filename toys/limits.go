@@ -319,14 +319,15 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
 		others[i] = math.NaN()
 		switch {
 		case math.IsNaN(mu[i]):
+			errs[i] = math.NaN()
 			x.Why = "CLs does not reach the confidence level at the signal strengths tried"
 			continue
 		case math.IsNaN(most[i]) || math.IsNaN(least[i]):
-			mu[i] = math.NaN()
+			mu[i], errs[i] = math.NaN(), math.NaN()
 			x.Why = "so many fits failed that they leave the limit open"
 			continue
 		case missing[i] > replicas/10:
-			mu[i] = math.NaN()
+			mu[i], errs[i] = math.NaN(), math.NaN()
 			x.Why = fmt.Sprintf("too few toys: %d of %d resampled sets give no limit", missing[i], replicas)
 			continue
 		}

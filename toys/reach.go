@@ -39,8 +39,8 @@ func (c *Config) complete() error {
 	if c.Mu == 0 {
 		c.Mu = 1
 	}
-	if !(c.Mu > 0) || math.IsInf(c.Mu, 1) {
-		return fmt.Errorf("signal strength is %v, must be finite and > 0", c.Mu)
+	if !(c.Mu >= LeastMu && c.Mu <= MostMu) {
+		return fmt.Errorf("signal strength is %v, must be from %v to %v: scale the rates instead", c.Mu, LeastMu, MostMu)
 	}
 	if c.Confidence == 0 {
 		c.Confidence = 0.95

@@ -97,8 +97,8 @@ func config(c *cli.Context, s *physics.Scenario) (toys.Config, error) {
 		if out.Mu, err = number(c, "mu"); err != nil {
 			return out, err
 		}
-		if !(out.Mu > 0) {
-			return out, usagef("--mu is %v, must be above 0", out.Mu)
+		if !(out.Mu >= toys.LeastMu && out.Mu <= toys.MostMu) {
+			return out, usagef("--mu is %v, must be from %v to %v: scale the rates instead", out.Mu, toys.LeastMu, toys.MostMu)
 		}
 	}
 	if c.IsSet("precision") {

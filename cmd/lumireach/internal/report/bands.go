@@ -30,7 +30,9 @@ func BandsTable(w io.Writer, h Header, r *toys.BandsResult) error {
 			for i, mu := range list(x.MuUp) {
 				row = append(row, toyLimit(mu, errs[i], others[i]))
 			}
-			reasons.add(x.Why)
+			for _, mu := range list(x.MuUp) {
+				reasons.missing(mu, p.Luminosity, x.Why)
+			}
 			g.add(row...)
 		}
 	}

@@ -36,6 +36,14 @@ func (g *grid) write(w io.Writer) error {
 			}
 		}
 	}
+	for _, line := range g.lines { // a text across two columns fits them
+		for k := range line[:max(0, len(line)-1)] {
+			if line[k+1] == across {
+				lack := utf8.RuneCountInString(line[k]) - widths[k] - g.gap(k+1) - widths[k+1]
+				widths[k+1] += max(0, lack)
+			}
+		}
+	}
 	total := 0
 	for k, width := range widths {
 		total += width + g.gap(k)

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 	"unicode/utf8"
 
@@ -55,12 +56,18 @@ func (o *once) add(reason string) {
 	if reason == "" {
 		return
 	}
-	for _, r := range *o {
-		if r == reason {
-			return
-		}
+	if !slices.Contains(*o, reason) {
+		*o = append(*o, reason)
 	}
-	*o = append(*o, reason)
+}
+
+// missing adds the reason of a number that is not there, with its luminosity
+// unless it holds for all of them.
+func (o *once) missing(value, at float64, reason string) {
+	if !math.IsNaN(value) || slices.Contains(*o, reason) {
+		return
+	}
+	o.add("at " + luminosity(at) + ": " + reason)
 }
 
 // ReachTable writes the reach of a search for people.
@@ -96,9 +103,9 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 		if withToys {
 			x := p.Toys.Exclusion
 			row = append(row, toyLimit(x.MuUp.Median, x.MuUpError.Median, x.MuUpOther.Median))
-			reasons.add(p.Toys.Discovery.Why)
-			reasons.add(p.Toys.Discovery.ChanceWhy)
-			reasons.add(x.Why)
+			reasons.missing(p.Toys.Discovery.Z.Median, p.Luminosity, p.Toys.Discovery.Why)
+			reasons.missing(p.Toys.Discovery.Chance5, p.Luminosity, p.Toys.Discovery.ChanceWhy)
+			reasons.missing(x.MuUp.Median, p.Luminosity, x.Why)
 		}
 		g.add(row...)
 		oneEvent = oneEvent || !math.IsNaN(f.Discovery.ChanceOne)

@@ -45,11 +45,11 @@ type Fitter struct {
 	gradient []float64
 	hessian  []float64
 
-	x, trial, best, step []float64
-	free                 []int
-	held                 []bool
-	matrix, right        []float64
-	variables            []int
+	x, trial, best, step, taken []float64
+	free                        []int
+	held                        []bool
+	matrix, right               []float64
+	variables                   []int
 
 	begin               []float64 // start of a search
 	promises, strengths []float64
@@ -66,6 +66,7 @@ func (e *Engine) Fitter() *Fitter {
 		trial:     make([]float64, size),
 		best:      make([]float64, size),
 		step:      make([]float64, size),
+		taken:     make([]float64, size),
 		free:      make([]int, 0, size),
 		held:      make([]bool, size),
 		matrix:    make([]float64, size*size),

@@ -159,11 +159,10 @@ func (f *Fitter) expectations(c int, x []float64, background, derivatives bool) 
 // value is half the deviance of d at x: +Inf where a count stands in a bin that
 // expects none, or a shape does not exist.
 func (f *Fitter) value(x []float64, d *Data, background bool) float64 {
-	total := f.constraints(x, d)
 	for c := range f.engine.channels {
 		f.expectations(c, x, background, false)
-		total += f.channelValue(c, d)
 	}
+	total := f.valueHere(x, d)
 	if math.IsNaN(total) {
 		return posInf
 	}
@@ -190,26 +189,32 @@ func (f *Fitter) channelValue(c int, d *Data) float64 {
 	return sum
 }
 
-// derivatives is value with its gradient and Hessian over all variables. With
-// expected set, the Hessian is replaced by the expected information
-// (Fisher scoring), which is never negative.
-func (f *Fitter) derivatives(x []float64, d *Data, background, expected bool) float64 {
+// derivatives sets the gradient and Hessian of value at x over all variables, and
+// tells whether it is finite there. With expected set, the Hessian is replaced by
+// the expected information (Fisher scoring), which is never negative.
+func (f *Fitter) derivatives(x []float64, d *Data, background, expected bool) bool {
 	size := len(x)
 	clear(f.gradient)
 	clear(f.hessian)
-	total := f.constraints(x, d)
 	for k, j := range f.engine.aux {
 		f.gradient[1+j] = x[1+j] - d.A[k]
 		f.hessian[(1+j)*size+1+j] = 1
 	}
 	for c := range f.engine.channels {
 		f.expectations(c, x, background, true)
-		total += f.channelValue(c, d)
-		if math.IsInf(total, 1) || math.IsNaN(total) {
-			return posInf
+		if !f.locals(c, d, background, expected) {
+			return false
 		}
-		f.locals(c, d, background, expected)
 		f.chain(c, x, background, expected)
+	}
+	return true
+}
+
+// valueHere is value at the x of the last call of derivatives or expectations.
+func (f *Fitter) valueHere(x []float64, d *Data) float64 {
+	total := f.constraints(x, d)
+	for c := range f.engine.channels {
+		total += f.channelValue(c, d)
 	}
 	return total
 }
@@ -240,8 +245,8 @@ func (f *Fitter) arrange(c int, background bool) [][]float64 {
 
 // locals sets the gradient and the Hessian of one channel in its local
 // quantities, so that the loops over bins do not grow with the number of
-// parameters.
-func (f *Fitter) locals(c int, d *Data, background, expected bool) {
+// parameters. It tells whether every count is expected.
+func (f *Fitter) locals(c int, d *Data, background, expected bool) bool {
 	ch := &f.engine.channels[c]
 	ws := &f.spaces[c]
 	n := d.N[ch.first : ch.first+ch.bins]
@@ -249,6 +254,8 @@ func (f *Fitter) locals(c int, d *Data, background, expected bool) {
 	for bin, count := range n {
 		l := lambda[bin]
 		switch {
+		case !(l > 0) && (count > 0 || l != 0): // NaN lands here too
+			return false
 		case expected && l > 0:
 			r[bin] = 1 - count/l
 			w[bin] = 1 / l
@@ -283,7 +290,7 @@ func (f *Fitter) locals(c int, d *Data, background, expected bool) {
 		}
 	}
 	if expected {
-		return
+		return true
 	}
 	for i := range ch.processes {
 		p := &ch.processes[i]
@@ -300,6 +307,7 @@ func (f *Fitter) locals(c int, d *Data, background, expected bool) {
 			}
 		}
 	}
+	return true
 }
 
 // pairIndex is the place of the pair a <= b in the order (0,0), (0,1), …, (1,1), ….

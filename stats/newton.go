@@ -19,14 +19,15 @@ func (f *Fitter) bounds(v int, minMu, maxMu float64) (lower, upper float64) {
 // minimise is Newton's method on half the deviance, in f.variables from f.x:
 // analytic derivatives, an active set of bounds, Fisher scoring where the
 // Hessian is not positive, step halving (Nocedal & Wright, Numerical
-// Optimization, chapters 3 and 16).
+// Optimization, chapters 3 and 16). A full step at whose end the next one is much
+// shorter needs no value of the deviance, and so no logarithm.
 func (f *Fitter) minimise(d *Data, minMu, maxMu float64, background bool) Fit {
-	value := f.derivatives(f.x, d, background, false)
-	if math.IsInf(value, 1) {
+	if !f.derivatives(f.x, d, background, false) {
 		return Fit{Deviance: posInf, Mu: f.x[0], Status: Impossible}
 	}
+	slope, bent, ok := f.newton(minMu, maxMu)
 	for range mostSteps {
-		slope, bent, ok := f.newton(minMu, maxMu)
+		positive := ok
 		if !ok {
 			f.derivatives(f.x, d, background, true)
 			if slope, bent, ok = f.newton(minMu, maxMu); !ok {
@@ -34,33 +35,59 @@ func (f *Fitter) minimise(d *Data, minMu, maxMu float64, background bool) Fit {
 			}
 		}
 		if -slope < decrementGoal && !bent {
+			value := f.valueHere(f.x, d)
 			for _, v := range f.variables {
 				f.x[v] += f.step[v]
 			}
 			return Fit{Deviance: math.Max(0, 2*value+slope), Mu: f.x[0], Status: Converged}
 		}
 		length := f.longest()
-		accepted := false
-		for range 40 {
-			copy(f.trial, f.x)
-			for _, v := range f.variables {
-				lower, upper := f.bounds(v, minMu, maxMu)
-				f.trial[v] = math.Max(lower, math.Min(upper, f.x[v]+length*f.step[v]))
-			}
-			next := f.derivatives(f.trial, d, background, false)
-			if next <= value+1e-4*length*slope+1e-13*(1+math.Abs(value)) {
-				value = next
+		f.move(length, minMu, maxMu)
+		if positive && !bent && length == 1 && f.derivatives(f.trial, d, background, false) {
+			copy(f.taken, f.step)
+			next, nextBent, nextOk := f.newton(minMu, maxMu)
+			if nextOk && next >= contraction*slope {
 				f.x, f.trial = f.trial, f.x
-				accepted = true
-				break
+				slope, bent, ok = next, nextBent, true
+				continue
 			}
-			length /= 2
+			copy(f.step, f.taken)
 		}
-		if !accepted {
+		if !f.halve(d, length, slope, minMu, maxMu, background) {
 			break
 		}
+		f.derivatives(f.x, d, background, false)
+		slope, bent, ok = f.newton(minMu, maxMu)
 	}
-	return Fit{Deviance: 2 * value, Mu: f.x[0], Status: Failed}
+	return Fit{Deviance: 2 * f.value(f.x, d, background), Mu: f.x[0], Status: Failed}
+}
+
+// contraction is how much the Newton decrement must fall for a step to be
+// accepted without a look at the deviance.
+const contraction = 0.25
+
+// move sets f.trial to f.x plus so much of the step, within the bounds.
+func (f *Fitter) move(length, minMu, maxMu float64) {
+	copy(f.trial, f.x)
+	for _, v := range f.variables {
+		lower, upper := f.bounds(v, minMu, maxMu)
+		f.trial[v] = math.Max(lower, math.Min(upper, f.x[v]+length*f.step[v]))
+	}
+}
+
+// halve takes the longest of the step's halves that lowers the deviance as it
+// should (Armijo 1966); false where none does.
+func (f *Fitter) halve(d *Data, length, slope, minMu, maxMu float64, background bool) bool {
+	value := f.value(f.x, d, background)
+	for range 40 {
+		f.move(length, minMu, maxMu)
+		if next := f.value(f.trial, d, background); next <= value+1e-4*length*slope+1e-13*(1+math.Abs(value)) {
+			f.x, f.trial = f.trial, f.x
+			return true
+		}
+		length /= 2
+	}
+	return false
 }
 
 // longest keeps a step where the quadratic model can be trusted: no constrained

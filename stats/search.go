@@ -9,7 +9,7 @@ func (f *Fitter) searchFree(d *Data, fit Fit, maxMu float64) Fit {
 	return f.search(d, fit, func(variable int, offset float64) (promise, mu float64) {
 		f.x[0] = 0
 		f.x[variable] += offset
-		if value := f.derivatives(f.x, d, false, true); math.IsInf(value, 1) {
+		if !f.derivatives(f.x, d, false, true) {
 			return negInf, 0
 		}
 		information := f.hessian[0]

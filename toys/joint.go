@@ -74,28 +74,26 @@ func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes [
 	if err != nil {
 		return nil, err
 	}
-	s.sort()
-	return s, nil
+	s.order, s.bad = make([][]place, len(nodes)), make([][]place, len(nodes))
+	err = r.share(len(nodes), func() func(int) { return s.sort })
+	return s, err
 }
 
-func (s *jointSample) sort() {
-	s.order = make([][]place, len(s.nodes))
-	s.bad = make([][]place, len(s.nodes))
-	for k := range s.nodes {
-		for b, toys := range s.blocks {
-			for i := range toys {
-				p := place{b, i}
-				if math.IsNaN(toys[i].q[k]) {
-					s.bad[k] = append(s.bad[k], p)
-				} else {
-					s.order[k] = append(s.order[k], p)
-				}
+// sort orders the toys as node k does.
+func (s *jointSample) sort(k int) {
+	for b, toys := range s.blocks {
+		for i := range toys {
+			p := place{b, i}
+			if math.IsNaN(toys[i].q[k]) {
+				s.bad[k] = append(s.bad[k], p)
+			} else {
+				s.order[k] = append(s.order[k], p)
 			}
 		}
-		sort.SliceStable(s.order[k], func(i, j int) bool {
-			return s.at(s.order[k][i]).q[k] > s.at(s.order[k][j]).q[k]
-		})
 	}
+	sort.SliceStable(s.order[k], func(i, j int) bool {
+		return s.at(s.order[k][i]).q[k] > s.at(s.order[k][j]).q[k]
+	})
 }
 
 // failures counts the toys with any failed fit.

@@ -32,7 +32,10 @@ func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Excl
 		}
 		thrown += main.size()
 		failed += main.failures()
-		x := r.solve(main, luminosity, alpha)
+		x, err := r.solve(main, luminosity, alpha)
+		if err != nil {
+			return Exclusion{}, err
+		}
 		if x.Why == "" || round == 2 {
 			x.Toys, x.FailedFits = thrown, failed
 			return x, nil
@@ -287,7 +290,7 @@ const (
 // blocks (Efron, Ann. Stat. 7 (1979) 1), each of which holds all components in
 // the same proportion. Failed fits, counted in every tail and in none, widen
 // the errors.
-func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
+func (r *runner) solve(s *jointSample, luminosity, alpha float64) (Exclusion, error) {
 	best := s.outcomes(s.once(), 0)
 	mu := s.roots(alpha, best)
 	most, least := mu, mu
@@ -296,27 +299,34 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
 		least = s.roots(alpha, s.outcomes(s.once(), -1))
 	}
 
-	var same, different [5][]float64 // limits of resampled sets, by whether the outcome is the best one's
-	missing := [5]int{}
-	r.resample(limitToys, luminosity, len(s.blocks), func(_ int, multiplicity []float64) {
-		again := s.outcomes(multiplicity, 0)
-		for i, value := range s.roots(alpha, again) {
+	var again [replicas][5]float64
+	var other [replicas][5]bool // another discrete outcome is at the quantile than the best one's
+	if err := r.resample(limitToys, luminosity, len(s.blocks), func(replica int, multiplicity []float64) {
+		outcomes := s.outcomes(multiplicity, 0)
+		again[replica] = s.roots(alpha, outcomes)
+		for i := range mu {
 			k := nearest(s.nodes, mu[i])
-			switch {
-			case math.IsNaN(value):
-				missing[i]++
-			case best[k][i].weight > atom && math.Abs(again[k][i].q-best[k][i].q) > tie:
-				different[i] = append(different[i], value)
-			default:
-				same[i] = append(same[i], value)
-			}
+			other[replica][i] = best[k][i].weight > atom && math.Abs(outcomes[k][i].q-best[k][i].q) > tie
 		}
-	})
+	}); err != nil {
+		return Exclusion{}, err
+	}
 
 	var x Exclusion
 	var errs, others [5]float64
 	for i := range mu {
 		others[i] = math.NaN()
+		var same, different []float64
+		for k := range again {
+			switch {
+			case math.IsNaN(again[k][i]):
+			case other[k][i]:
+				different = append(different, again[k][i])
+			default:
+				same = append(same, again[k][i])
+			}
+		}
+		missing := replicas - len(same) - len(different)
 		switch {
 		case math.IsNaN(mu[i]):
 			errs[i] = math.NaN()
@@ -326,19 +336,19 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) Exclusion {
 			mu[i], errs[i] = math.NaN(), math.NaN()
 			x.Why = "so many fits failed that they leave the limit open"
 			continue
-		case missing[i] > replicas/10:
+		case missing > replicas/10:
 			mu[i], errs[i] = math.NaN(), math.NaN()
-			x.Why = fmt.Sprintf("too few toys: %d of %d resampled sets give no limit", missing[i], replicas)
+			x.Why = fmt.Sprintf("too few toys: %d of %d resampled sets give no limit", missing, replicas)
 			continue
 		}
-		if float64(len(different[i])) > rare*replicas {
-			slices.Sort(different[i])
-			others[i] = different[i][len(different[i])/2]
+		if float64(len(different)) > rare*replicas {
+			slices.Sort(different)
+			others[i] = different[len(different)/2]
 		}
-		errs[i] = deviation(same[i]) + math.Abs(most[i]-least[i])/2
+		errs[i] = deviation(same) + math.Abs(most[i]-least[i])/2
 	}
 	x.MuUp, x.MuUpError, x.MuUpOther = band(mu), band(errs), band(others)
-	return x
+	return x, nil
 }
 
 // nearest is the node nearest to mu in ratio.

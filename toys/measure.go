@@ -27,18 +27,21 @@ func newMeasurement(luminosity float64) measurement {
 }
 
 // resample calls do with the multiplicities of bootstrap replicas of so many
-// blocks (Efron, Ann. Stat. 7 (1979) 1). Equal keys give equal replicas.
-func (r *runner) resample(use purpose, luminosity float64, blocks int, do func(replica int, multiplicity []float64)) {
+// blocks (Efron, Ann. Stat. 7 (1979) 1), several at a time. Equal keys give equal
+// replicas.
+func (r *runner) resample(use purpose, luminosity float64, blocks int, do func(replica int, multiplicity []float64)) error {
 	s := newStream()
 	s.restart(key{r.config.Seed, bootstrap + use, luminosity, 0, 0})
-	multiplicity := make([]float64, blocks)
-	for k := range replicas {
-		clear(multiplicity)
+	var drawn [replicas][]float64
+	for k := range drawn {
+		drawn[k] = make([]float64, blocks)
 		for range blocks {
-			multiplicity[s.Intn(blocks)]++
+			drawn[k][s.Intn(blocks)]++
 		}
-		do(k, multiplicity)
 	}
+	return r.share(replicas, func() func(int) {
+		return func(k int) { do(k, drawn[k]) }
+	})
 }
 
 // measureDiscovery throws the toys of a discovery goal at one luminosity: the
@@ -87,17 +90,18 @@ func (r *runner) measureDiscovery(e *stats.Engine, luminosity, goal float64, toy
 		}
 		q[k] = make([]float64, replicas)
 	}
-	r.resample(signalToys, luminosity, signal.blocks, func(b int, multiplicity []float64) {
+	if err := r.resample(signalToys, luminosity, signal.blocks, func(b int, multiplicity []float64) {
 		for k, fraction := range fractions {
 			q[k][b] = signal.resampled(1-fraction, multiplicity)
 		}
-	})
-	r.resample(nullToys, luminosity, null.blocks, func(b int, multiplicity []float64) {
+	}); err != nil {
+		return m, err
+	}
+	return m, r.resample(nullToys, luminosity, null.blocks, func(b int, multiplicity []float64) {
 		for k := range fractions {
 			m.replicas[k][b] = stats.Significance(null.resampled(q[k][b], multiplicity))
 		}
 	})
-	return m, nil
 }
 
 // measureExclusion throws the toys of the exclusion goal at one luminosity: the
@@ -119,13 +123,12 @@ func (r *runner) measureExclusion(e *stats.Engine, luminosity float64, toys int)
 	for k := range m.value {
 		m.value[k], m.bound[k] = value, bound
 	}
-	r.resample(exclusionToys, luminosity, len(s.blocks), func(b int, multiplicity []float64) {
+	return m, r.resample(exclusionToys, luminosity, len(s.blocks), func(b int, multiplicity []float64) {
 		v := stats.PhiInverse(s.excluded(alpha, multiplicity, 0))
 		for k := range m.replicas {
 			m.replicas[k][b] = v
 		}
 	})
-	return m, nil
 }
 
 // excluded is the probability, without signal, of CLs <= alpha at the first

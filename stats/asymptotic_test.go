@@ -148,7 +148,7 @@ func uncertain(s, b, size float64) Search {
 	return func(l float64) (Model, error) {
 		m := count(s*l, b*l)
 		m.Params = []Param{uncertainty("background")}
-		m.Channels[0].Processes[1].Rate = []Effect{{0, math.Log1p(size)}}
+		m.Channels[0].Processes[1].Rate = []Effect{{Param: 0, Lin: math.Log1p(size)}}
 		return m, nil
 	}
 }

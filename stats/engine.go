@@ -199,14 +199,14 @@ func compile(c Channel, first int) channel {
 			q.factorCol = column(q.factor)
 		}
 		for _, effect := range p.Rate {
-			q.rate = append(q.rate, Effect{1 + effect.Param, effect.Lin})
+			q.rate = append(q.rate, Effect{Param: 1 + effect.Param, Lin: effect.Lin})
 			q.rateCols = append(q.rateCols, column(1+effect.Param))
 		}
 		q.move = make([][]Effect, len(p.Move))
 		q.movingCols = make([][]int, len(p.Move))
 		for a, move := range p.Move {
 			for _, effect := range move {
-				q.move[a] = append(q.move[a], Effect{1 + effect.Param, effect.Lin})
+				q.move[a] = append(q.move[a], Effect{Param: 1 + effect.Param, Lin: effect.Lin})
 				q.movingCols[a] = append(q.movingCols[a], column(1+effect.Param))
 			}
 			if len(move) > 0 {

@@ -14,11 +14,14 @@ type Shape interface {
 	Fill(q, f, d1, d2 []float64)
 }
 
-// Effect adds Lin·x of parameter Param to the logarithm of a rate or to one
-// quantity of a shape.
+// Effect adds Lin·x + Bend·g(Scale·x) of parameter Param to the logarithm of a
+// rate, or Lin·x to one quantity of a shape; g is Bend. A relative change by
+// the factors up and down has Lin = ½ ln(up/down) and Bend = ½ ln(up·down).
 type Effect struct {
 	Param int // index into Model.Params
 	Lin   float64
+	Bend  float64 // 0 unless up and down differ; rates only
+	Scale float64 // of x where it bends, > 0; not looked at where Bend is 0
 }
 
 // Process is one source of events in a channel. It expects
@@ -40,6 +43,13 @@ type Process struct {
 type Channel struct {
 	Bins      int
 	Processes []Process
+	// Tau is the size of the simulation behind each bin's whole background, in
+	// events of weight 1: (expectation / statistical error)². Where it is
+	// positive the background of the bin is multiplied by a factor γ with the
+	// auxiliary count Pois(γ·Tau): Barlow & Beeston, Comput. Phys. Commun. 77
+	// (1993) 219, with one factor per bin as in Conway, arXiv:1103.0354. Nil: no
+	// bin has one.
+	Tau []float64
 }
 
 // Param is one nuisance parameter: a constrained one has an auxiliary

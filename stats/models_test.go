@@ -40,11 +40,11 @@ func window(s, b, shift float64) Model {
 		Channels: []Channel{{Bins: 60, Processes: []Process{
 			{
 				Yield: s, Signal: true, Factor: -1,
-				Rate:  []Effect{{2, math.Log(1.1)}},
+				Rate:  []Effect{{Param: 2, Lin: math.Log(1.1)}},
 				Shape: peak{c}, At: []float64{126, math.Log(1.6)},
-				Move: [][]Effect{{{3, shift}}, {{4, math.Log(1.1)}}},
+				Move: [][]Effect{{{Param: 3, Lin: shift}}, {{Param: 4, Lin: math.Log(1.1)}}},
 			},
-			{Yield: b, Factor: 0, Shape: slope{c}, At: []float64{-0.03}, Move: [][]Effect{{{1, 1}}}},
+			{Yield: b, Factor: 0, Shape: slope{c}, At: []float64{-0.03}, Move: [][]Effect{{{Param: 1, Lin: 1}}}},
 		}}},
 	}
 }
@@ -60,7 +60,7 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 		var e []Effect
 		for k := range uncertainties {
 			if r.Float64() < 0.3 {
-				e = append(e, Effect{k, (2*r.Float64() - 1) * most})
+				e = append(e, Effect{Param: k, Lin: (2*r.Float64() - 1) * most})
 			}
 		}
 		return e
@@ -100,7 +100,7 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 			},
 			{
 				Yield: 50 + 1000*r.Float64(), Factor: rate, Rate: some(0.05), Shape: slope{c},
-				At: []float64{-0.3 * r.Float64()}, Move: [][]Effect{{{tilt, 1}}},
+				At: []float64{-0.3 * r.Float64()}, Move: [][]Effect{{{Param: tilt, Lin: 1}}},
 			},
 			{
 				Yield: 20 * r.Float64(), Factor: -1, Rate: some(0.2), Shape: slope{c},

@@ -91,14 +91,14 @@ func reduce(m Model) (Model, [][]float64) {
 		var turned []Effect
 		for _, e := range effects {
 			if position[e.Param] < 0 {
-				turned = append(turned, Effect{freeIndex[e.Param], e.Lin})
+				turned = append(turned, Effect{Param: freeIndex[e.Param], Lin: e.Lin})
 			}
 		}
 		r := row(effects)
 		length := floats.Norm(r, 2)
 		for k, b := range basis {
 			if lin := floats.Dot(b, r); lin > 1e-14*length || lin < -1e-14*length {
-				turned = append(turned, Effect{firstConstrained + k, lin})
+				turned = append(turned, Effect{Param: firstConstrained + k, Lin: lin})
 			}
 		}
 		return turned

@@ -4,13 +4,14 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // Asimov is the experiment in which every count and auxiliary measurement is at
 // its expectation. Cowan, Cranmer, Gross, Vitells, Eur. Phys. J. C71 (2011)
 // 1554, section 3.2 (CCGV below).
 func (p Point) Asimov() *Data {
-	return &Data{N: append([]float64(nil), p.Lambda...), A: append([]float64(nil), p.A...)}
+	return &Data{N: slices.Clone(p.Lambda), A: slices.Clone(p.A), M: slices.Clone(p.M)}
 }
 
 // MedianZ is the median discovery significance at signal strength mu by the

@@ -265,7 +265,7 @@ func (c *centring) spread() []float64 {
 				continue
 			}
 			for _, effect := range p.rate {
-				change[effect.Param-1] = math.Max(change[effect.Param-1], math.Abs(effect.Lin*c.x[effect.Param]))
+				change[effect.Param-1] = math.Max(change[effect.Param-1], math.Abs(effect.value(c.x[effect.Param])))
 			}
 		}
 	}

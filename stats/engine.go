@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 )
 
 var (
@@ -18,7 +19,8 @@ type Engine struct {
 	channels []channel
 	params   []Param
 	bins     int
-	aux      []int // parameters with an auxiliary measurement, in the order of Data.A
+	taus     []float64 // sizes of the simulation, in the order of Data.M
+	aux      []int     // parameters with an auxiliary measurement, in the order of Data.A
 
 	// Variables of a fit: 0 is μ, 1+j is parameter j.
 	background []int // those that move a background
@@ -45,6 +47,7 @@ type channel struct {
 	variables   []int // that change any of its processes
 	signalBins  []float64
 	bareBins    []float64
+	simulated   []simulated // one for each bin, nil where none has a factor
 }
 
 // process is a Process whose parameters are variables of a fit; the Cols fields
@@ -83,6 +86,7 @@ func Prepare(m Model) (*Engine, error) {
 	for _, c := range m.Channels {
 		e.channels = append(e.channels, compile(c, e.bins))
 		e.bins += c.Bins
+		e.simulate(c)
 		for _, p := range c.Processes {
 			if p.Yield == 0 {
 				continue
@@ -120,6 +124,9 @@ func Prepare(m Model) (*Engine, error) {
 // Bins is the number of bins of all channels together.
 func (e *Engine) Bins() int { return e.bins }
 
+// Factors is the number of simulation factors.
+func (e *Engine) Factors() int { return len(e.taus) }
+
 // Auxiliary is the number of auxiliary measurements of one experiment.
 func (e *Engine) Auxiliary() int { return len(e.aux) }
 
@@ -129,6 +136,14 @@ func check(m Model) error {
 	for i, c := range m.Channels {
 		if c.Bins < 1 {
 			return fmt.Errorf("channel %d has %d bins", i, c.Bins)
+		}
+		if c.Tau != nil && len(c.Tau) != c.Bins {
+			return fmt.Errorf("channel %d has %d bins and %d sizes of its simulation", i, c.Bins, len(c.Tau))
+		}
+		for bin, tau := range c.Tau {
+			if !(tau >= 0) || math.IsInf(tau, 1) {
+				return fmt.Errorf("channel %d, bin %d: size of the simulation is %v, must be finite and >= 0", i, bin, tau)
+			}
 		}
 		for k, p := range c.Processes {
 			if !(p.Yield >= 0) || math.IsInf(p.Yield, 1) {
@@ -199,15 +214,17 @@ func compile(c Channel, first int) channel {
 			q.factorCol = column(q.factor)
 		}
 		for _, effect := range p.Rate {
-			q.rate = append(q.rate, Effect{Param: 1 + effect.Param, Lin: effect.Lin})
-			q.rateCols = append(q.rateCols, column(1+effect.Param))
+			effect.Param++
+			q.rate = append(q.rate, effect)
+			q.rateCols = append(q.rateCols, column(effect.Param))
 		}
 		q.move = make([][]Effect, len(p.Move))
 		q.movingCols = make([][]int, len(p.Move))
 		for a, move := range p.Move {
 			for _, effect := range move {
-				q.move[a] = append(q.move[a], Effect{Param: 1 + effect.Param, Lin: effect.Lin})
-				q.movingCols[a] = append(q.movingCols[a], column(1+effect.Param))
+				effect.Param++
+				q.move[a] = append(q.move[a], effect)
+				q.movingCols[a] = append(q.movingCols[a], column(effect.Param))
 			}
 			if len(move) > 0 {
 				q.moving = append(q.moving, a)
@@ -319,7 +336,7 @@ func (e *Engine) Point(mu float64, x []float64) Point {
 	v := e.nominal()
 	v[0] = mu
 	copy(v[1:], x)
-	p := Point{Lambda: make([]float64, e.bins), A: make([]float64, len(e.aux))}
+	p := Point{Lambda: make([]float64, e.bins), A: make([]float64, len(e.aux)), M: slices.Clone(e.taus)}
 	f := e.Fitter()
 	for c := range e.channels {
 		f.expect(c, v, p.Lambda, mu == 0)

@@ -92,7 +92,7 @@ func (e *Engine) Fitter() *Fitter {
 // start puts the parameters at their auxiliary values, or nominal where they
 // have none.
 func (f *Fitter) start(d *Data, mu float64) {
-	if len(d.N) != f.engine.bins || len(d.A) != len(f.engine.aux) {
+	if len(d.N) != f.engine.bins || len(d.A) != len(f.engine.aux) || len(d.M) != len(f.engine.taus) {
 		panic("stats: data do not fit the model")
 	}
 	f.x[0] = mu

@@ -24,7 +24,7 @@ func expectation(m Model, mu float64, x []float64) []float64 {
 				n *= x[p.Factor]
 			}
 			for _, e := range p.Rate {
-				n *= math.Exp(e.Lin * x[e.Param])
+				n *= math.Exp(e.Lin*x[e.Param] + e.Bend*unequal(e.Scale*x[e.Param]))
 			}
 			f := []float64{1}
 			if p.Shape != nil {
@@ -44,6 +44,15 @@ func expectation(m Model, mu float64, x []float64) []float64 {
 		all = append(all, lambda...)
 	}
 	return all
+}
+
+// unequal is what up and down factors that differ add to the line: |θ| beyond
+// ±1, and inside the polynomial with its value and slope at the ends.
+func unequal(x float64) float64 {
+	if math.Abs(x) >= 1 {
+		return math.Abs(x)
+	}
+	return (3*math.Pow(x, 2) - math.Pow(x, 4)) / 2
 }
 
 func halfDeviance(m Model, mu float64, x []float64, n, a []float64) float64 {
@@ -185,7 +194,7 @@ func TestFitAgainstMinimiser(t *testing.T) {
 				}
 			}
 			for _, mu := range []float64{0, 1} {
-				d := throw(r, Point{expectation(m, mu, nominal), make([]float64, constrained)})
+				d := throw(r, Point{Lambda: expectation(m, mu, nominal), A: make([]float64, constrained)})
 				reduced := &Data{N: d.N, A: auxiliary(m, d.A)}
 				// What the reduction leaves out stays at its auxiliary value at no cost.
 				free := f.Free(reduced, mu, math.Inf(1))
@@ -210,6 +219,9 @@ func TestDerivatives(t *testing.T) {
 	r := rand.New(rand.NewPCG(3, 4))
 	for k := range 20 {
 		m := several(r, 1+k%4, 2+k%5)
+		if k%2 == 1 {
+			m = simulatedModel(r, m)
+		}
 		e := prepare(t, m)
 		f := e.Fitter()
 		x := e.nominal()

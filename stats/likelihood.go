@@ -26,14 +26,19 @@ func deviance(n, lambda float64) float64 {
 type workspace struct {
 	lambda, r, w, wc []float64
 
+	// Only where bins have simulation factors.
+	background, mixed []float64 // the part of lambda that factors multiply
+	weights           *weights
+
 	// One entry for each local quantity: an amplitude (expected events of a
 	// process) or a quantity of its shape.
-	columns [][]float64 // ∂λ/∂local divided by scale
-	scale   []float64
-	local   []float64 // gradient
-	hessian []float64 // local × local, upper triangle
-	rows    []row     // ∂local/∂variable
-	product []float64 // one row of hessian times the rows, over channel.variables
+	columns  [][]float64 // ∂λ/∂local divided by scale
+	scale    []float64
+	ofSignal []bool
+	local    []float64 // gradient
+	hessian  []float64 // local × local, upper triangle
+	rows     []row     // ∂local/∂variable
+	product  []float64 // one row of hessian times the rows, over channel.variables
 
 	processes []processSpace
 }
@@ -59,6 +64,10 @@ func newWorkspace(c *channel) workspace {
 		w:       make([]float64, c.bins),
 		wc:      make([]float64, c.bins),
 		product: make([]float64, len(c.variables)),
+	}
+	if c.simulated != nil {
+		w.background, w.mixed = make([]float64, c.bins), make([]float64, c.bins)
+		w.weights = newWeights(c.bins)
 	}
 	locals := 0
 	for i := range c.processes {
@@ -93,6 +102,7 @@ func newWorkspace(c *channel) workspace {
 	}
 	w.columns = make([][]float64, locals)
 	w.scale = make([]float64, locals)
+	w.ofSignal = make([]bool, locals)
 	w.local = make([]float64, locals)
 	w.hessian = make([]float64, locals*locals)
 	return w
@@ -111,6 +121,9 @@ func (f *Fitter) expectations(c int, x []float64, background, derivatives bool) 
 	ws := &f.spaces[c]
 	lambda := ws.lambda
 	copy(lambda, ch.fixed)
+	if ch.simulated != nil {
+		copy(ws.background, ch.fixed)
+	}
 	for i := range ch.processes {
 		p := &ch.processes[i]
 		if background && p.signal {
@@ -118,8 +131,9 @@ func (f *Fitter) expectations(c int, x []float64, background, derivatives bool) 
 		}
 		s := &ws.processes[i]
 		exponent := 0.0
-		for _, effect := range p.rate {
-			exponent += effect.Lin * x[effect.Param]
+		for e := range p.rate {
+			effect := &p.rate[e]
+			exponent += effect.value(x[effect.Param])
 		}
 		s.unit = p.yield
 		if exponent != 0 {
@@ -153,6 +167,11 @@ func (f *Fitter) expectations(c int, x []float64, background, derivatives bool) 
 		for bin := range lambda {
 			lambda[bin] += amplitude * fractions[bin]
 		}
+		if ch.simulated != nil && !p.signal {
+			for bin := range ws.background {
+				ws.background[bin] += amplitude * fractions[bin]
+			}
+		}
 	}
 }
 
@@ -180,6 +199,9 @@ func (f *Fitter) constraints(x []float64, d *Data) float64 {
 
 func (f *Fitter) channelValue(c int, d *Data) float64 {
 	ch := &f.engine.channels[c]
+	if ch.simulated != nil {
+		return f.simulatedValue(c, d)
+	}
 	lambda := f.spaces[c].lambda
 	n := d.N[ch.first : ch.first+len(lambda)]
 	sum := 0.0
@@ -231,12 +253,12 @@ func (f *Fitter) arrange(c int, background bool) [][]float64 {
 		if background && p.signal {
 			continue
 		}
-		ws.scale[len(columns)] = 1
+		ws.scale[len(columns)], ws.ofSignal[len(columns)] = 1, p.signal
 		s.amplitudeColumn = len(columns)
 		columns = append(columns, s.f)
 		s.firstQuantityCol = len(columns)
 		for _, a := range p.moving {
-			ws.scale[len(columns)] = s.amplitude
+			ws.scale[len(columns)], ws.ofSignal[len(columns)] = s.amplitude, p.signal
 			columns = append(columns, s.d1[a*ch.bins:(a+1)*ch.bins])
 		}
 	}
@@ -248,6 +270,9 @@ func (f *Fitter) arrange(c int, background bool) [][]float64 {
 // parameters. It tells whether every count is expected.
 func (f *Fitter) locals(c int, d *Data, background, expected bool) bool {
 	ch := &f.engine.channels[c]
+	if ch.simulated != nil {
+		return f.simulatedLocals(c, d, background, expected)
+	}
 	ws := &f.spaces[c]
 	n := d.N[ch.first : ch.first+ch.bins]
 	lambda, r, w := ws.lambda[:len(n)], ws.r[:len(n)], ws.w[:len(n)]
@@ -289,14 +314,28 @@ func (f *Fitter) locals(c int, d *Data, background, expected bool) bool {
 			h[v] *= ws.scale[u] * ws.scale[v]
 		}
 	}
-	if expected {
-		return true
+	if !expected {
+		f.bendLocals(c, columns, background, r, r)
 	}
+	return true
+}
+
+// bendLocals adds to the local Hessian what the second derivatives of λ do:
+// signalR and backgroundR are the first derivatives of half the deviance in the
+// expected events of each bin.
+func (f *Fitter) bendLocals(c int, columns [][]float64, background bool, signalR, backgroundR []float64) {
+	ch := &f.engine.channels[c]
+	ws := &f.spaces[c]
+	k := len(columns)
 	for i := range ch.processes {
 		p := &ch.processes[i]
 		s := &ws.processes[i]
 		if background && p.signal {
 			continue
+		}
+		r := backgroundR
+		if p.signal {
+			r = signalR
 		}
 		for ka, a := range p.moving {
 			col := s.firstQuantityCol + ka
@@ -307,7 +346,6 @@ func (f *Fitter) locals(c int, d *Data, background, expected bool) bool {
 			}
 		}
 	}
-	return true
 }
 
 // pairIndex is the place of the pair a <= b in the order (0,0), (0,1), …, (1,1), ….
@@ -329,8 +367,8 @@ func (f *Fitter) jacobianRows(c int, x []float64, background bool) []*row {
 			continue
 		}
 		amplitude := &ws.rows[r]
-		for e, effect := range p.rate {
-			amplitude.vals[e] = s.amplitude * effect.Lin
+		for e := range p.rate {
+			amplitude.vals[e] = s.amplitude * p.rate[e].slope(x[p.rate[e].Param])
 		}
 		e := len(p.rate)
 		mu, factor := p.factors(x)
@@ -377,7 +415,7 @@ func (f *Fitter) chain(c int, x []float64, background, expected bool) {
 		}
 		s := &ws.processes[i]
 		mu, factor := p.factors(x)
-		f.curvature(p, ws.local[s.amplitudeColumn], s, mu, factor, size)
+		f.curvature(p, ws.local[s.amplitudeColumn], s, x, mu, factor)
 	}
 	for u := range k {
 		ru := rows[u]
@@ -411,22 +449,29 @@ func (f *Fitter) chain(c int, x []float64, background, expected bool) {
 
 // curvature adds the second derivatives of an amplitude in the variables, times
 // the gradient in that amplitude.
-func (f *Fitter) curvature(p *process, gradient float64, s *processSpace, mu, factor float64, size int) {
+func (f *Fitter) curvature(p *process, gradient float64, s *processSpace, x []float64, mu, factor float64) {
+	size := len(x)
 	add := func(i, j int, value float64) {
 		f.hessian[i*size+j] += value
 		if i != j {
 			f.hessian[j*size+i] += value
 		}
 	}
-	for i, a := range p.rate {
-		for _, b := range p.rate[i:] {
-			add(a.Param, b.Param, gradient*s.amplitude*a.Lin*b.Lin)
+	for i := range p.rate {
+		a := &p.rate[i]
+		slope := a.slope(x[a.Param])
+		if a.Bend != 0 {
+			add(a.Param, a.Param, gradient*s.amplitude*a.curvature(x[a.Param]))
+		}
+		for k := range p.rate[i:] {
+			b := &p.rate[i+k]
+			add(a.Param, b.Param, gradient*s.amplitude*slope*b.slope(x[b.Param]))
 		}
 		if p.factor >= 0 {
-			add(p.factor, a.Param, gradient*s.unit*mu*a.Lin)
+			add(p.factor, a.Param, gradient*s.unit*mu*slope)
 		}
 		if p.signal {
-			add(0, a.Param, gradient*s.unit*factor*a.Lin)
+			add(0, a.Param, gradient*s.unit*factor*slope)
 		}
 	}
 	if p.signal && p.factor >= 0 {

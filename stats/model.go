@@ -75,10 +75,12 @@ type Model struct {
 type Data struct {
 	N []float64 // counts, bins of all channels in order
 	A []float64 // auxiliary measurements of the engine's constrained parameters, in order
+	M []float64 // auxiliary counts of the simulation, one for each factor, in the order of bins
 }
 
 // Point is what an experiment is expected to give: the means of Data.
 type Point struct {
 	Lambda []float64
 	A      []float64
+	M      []float64
 }

@@ -65,6 +65,15 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 		}
 		return e
 	}
+	rates := func(most float64) []Effect {
+		e := some(most)
+		for i := range e {
+			if r.Float64() < 0.25 {
+				e[i].Bend, e[i].Scale = (2*r.Float64()-1)*most/3, 0.5+r.Float64()
+			}
+		}
+		return e
+	}
 	tied := -1
 	for range channels {
 		free := func(p Param) int {
@@ -74,8 +83,8 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 		if r.Float64() < 0.4 {
 			b := 3 + 50*r.Float64()
 			ch := Channel{Bins: 1, Processes: []Process{
-				{Yield: 1 + 10*r.Float64(), Signal: true, Factor: -1, Rate: some(0.2)},
-				{Yield: b, Factor: -1, Rate: some(0.2)},
+				{Yield: 1 + 10*r.Float64(), Signal: true, Factor: -1, Rate: rates(0.2)},
+				{Yield: b, Factor: -1, Rate: rates(0.2)},
 			}}
 			if r.Float64() < 0.5 {
 				if tied < 0 {
@@ -94,16 +103,16 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 		tilt := free(Param{Name: "slope", Lower: -50, Upper: 50, Step: 0.1})
 		m.Channels = append(m.Channels, Channel{Bins: bins, Processes: []Process{
 			{
-				Yield: 5 + 40*r.Float64(), Signal: true, Factor: -1, Rate: some(0.2),
+				Yield: 5 + 40*r.Float64(), Signal: true, Factor: -1, Rate: rates(0.2),
 				Shape: peak{c}, At: []float64{position, math.Log(0.4 + 0.5*r.Float64())},
 				Move: [][]Effect{some(0.1), some(0.15)},
 			},
 			{
-				Yield: 50 + 1000*r.Float64(), Factor: rate, Rate: some(0.05), Shape: slope{c},
+				Yield: 50 + 1000*r.Float64(), Factor: rate, Rate: rates(0.05), Shape: slope{c},
 				At: []float64{-0.3 * r.Float64()}, Move: [][]Effect{{{Param: tilt, Lin: 1}}},
 			},
 			{
-				Yield: 20 * r.Float64(), Factor: -1, Rate: some(0.2), Shape: slope{c},
+				Yield: 20 * r.Float64(), Factor: -1, Rate: rates(0.2), Shape: slope{c},
 				At: []float64{0.1}, Move: [][]Effect{nil},
 			},
 		}})
@@ -111,11 +120,34 @@ func several(r *rand.Rand, channels, uncertainties int) Model {
 	return m
 }
 
+// simulatedModel gives every bin of every window a simulation factor of 2 % to 50 %.
+func simulatedModel(r *rand.Rand, m Model) Model {
+	for i := range m.Channels {
+		c := &m.Channels[i]
+		if c.Bins == 1 {
+			continue
+		}
+		c.Tau = make([]float64, c.Bins)
+		for bin := range c.Tau {
+			c.Tau[bin] = 4 * math.Pow(625, r.Float64())
+		}
+	}
+	return m
+}
+
 // throw draws an experiment by sequential inversion (Devroye, Non-Uniform
 // Random Variate Generation, section X.3.3).
 func throw(r *rand.Rand, p Point) *Data {
-	d := &Data{N: make([]float64, len(p.Lambda)), A: make([]float64, len(p.A))}
-	for i, l := range p.Lambda {
+	d := &Data{N: counts(r, p.Lambda), A: make([]float64, len(p.A)), M: counts(r, p.M)}
+	for i, a := range p.A {
+		d.A[i] = a + r.NormFloat64()
+	}
+	return d
+}
+
+func counts(r *rand.Rand, means []float64) []float64 {
+	out := make([]float64, len(means))
+	for i, l := range means {
 		// Split large means, so that exp(-λ) does not underflow.
 		for l > 0 {
 			part := math.Min(l, 200)
@@ -126,11 +158,8 @@ func throw(r *rand.Rand, p Point) *Data {
 				k++
 				term *= part / k
 			}
-			d.N[i] += k
+			out[i] += k
 		}
 	}
-	for i, a := range p.A {
-		d.A[i] = a + r.NormFloat64()
-	}
-	return d
+	return out
 }

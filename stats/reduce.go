@@ -11,10 +11,13 @@ import "gonum.org/v1/gonum/floats"
 // sums span a space; in an orthonormal basis of it the parameters are unit
 // normal again, and every direction outside it keeps its auxiliary value
 // whatever the counts are. The reduction is exact. Rows of backgrounds come
-// first, so that the later directions move signals alone.
+// first, so that the later directions move signals alone. A parameter that bends
+// anywhere is no such sum and stays itself.
 func reduce(m Model) (Model, [][]float64) {
+	bent := bentParams(m)
 	position := make([]int, len(m.Params)) // among the constrained, -1 for free ones
 	constrained := 0
+	var kept [][]float64 // rows of basis for the bent
 	for j, p := range m.Params {
 		position[j] = -1
 		if p.Constrained {
@@ -22,11 +25,22 @@ func reduce(m Model) (Model, [][]float64) {
 			constrained++
 		}
 	}
+	unit := func(k int) []float64 {
+		r := make([]float64, constrained)
+		r[k] = 1
+		return r
+	}
+	stays := func(j int) bool { return position[j] < 0 || bent[j] }
+	for j := range m.Params {
+		if bent[j] {
+			kept = append(kept, unit(position[j]))
+		}
+	}
 	row := func(effects []Effect) []float64 {
 		r := make([]float64, constrained)
 		for _, e := range effects {
-			if k := position[e.Param]; k >= 0 {
-				r[k] += e.Lin
+			if !stays(e.Param) {
+				r[position[e.Param]] += e.Lin
 			}
 		}
 		return r
@@ -66,20 +80,19 @@ func reduce(m Model) (Model, [][]float64) {
 		}
 	}
 
-	if len(basis) == constrained {
+	if len(kept)+len(basis) == constrained {
 		identity := make([][]float64, constrained)
 		for k := range identity {
-			identity[k] = make([]float64, constrained)
-			identity[k][k] = 1
+			identity[k] = unit(k)
 		}
 		return m, identity
 	}
 
 	out := Model{Channels: make([]Channel, len(m.Channels))}
-	freeIndex := make([]int, len(m.Params))
+	newIndex := make([]int, len(m.Params))
 	for j, p := range m.Params {
-		if !p.Constrained {
-			freeIndex[j] = len(out.Params)
+		if stays(j) {
+			newIndex[j] = len(out.Params)
 			out.Params = append(out.Params, p)
 		}
 	}
@@ -90,8 +103,9 @@ func reduce(m Model) (Model, [][]float64) {
 	rotate := func(effects []Effect) []Effect {
 		var turned []Effect
 		for _, e := range effects {
-			if position[e.Param] < 0 {
-				turned = append(turned, Effect{Param: freeIndex[e.Param], Lin: e.Lin})
+			if stays(e.Param) {
+				e.Param = newIndex[e.Param]
+				turned = append(turned, e)
 			}
 		}
 		r := row(effects)
@@ -104,7 +118,7 @@ func reduce(m Model) (Model, [][]float64) {
 		return turned
 	}
 	for i, c := range m.Channels {
-		out.Channels[i] = Channel{Bins: c.Bins, Processes: make([]Process, len(c.Processes))}
+		out.Channels[i] = Channel{Bins: c.Bins, Processes: make([]Process, len(c.Processes)), Tau: c.Tau}
 		for k, p := range c.Processes {
 			if p.Yield == 0 {
 				p.Rate, p.Move = nil, make([][]Effect, len(p.At))
@@ -116,10 +130,23 @@ func reduce(m Model) (Model, [][]float64) {
 			}
 			p.Move = move
 			if p.Factor >= 0 {
-				p.Factor = freeIndex[p.Factor]
+				p.Factor = newIndex[p.Factor]
 			}
 			out.Channels[i].Processes[k] = p
 		}
 	}
-	return out, basis
+	return out, append(kept, basis...)
+}
+
+// bentParams tells which constrained parameters have an effect that bends.
+func bentParams(m Model) []bool {
+	bent := make([]bool, len(m.Params))
+	for _, c := range m.Channels {
+		for _, p := range c.Processes {
+			for _, e := range p.Rate {
+				bent[e.Param] = bent[e.Param] || e.Bend != 0 && m.Params[e.Param].Constrained
+			}
+		}
+	}
+	return bent
 }

@@ -5,6 +5,7 @@ import (
 	"math"
 	"slices"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/mathext"
 
 	"lumireach/stats"
@@ -194,6 +195,7 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 	if len(x) < 3 {
 		return math.NaN(), math.NaN(), "too few luminosities near the formula's answer at which the toys give a number"
 	}
+	even(sigma)
 	intercept, slope := line(x, d, sigma)
 	chi2 := 0.0
 	for i := range x {
@@ -260,6 +262,16 @@ func steepness(search stats.Search, a aim, luminosity float64) (float64, error) 
 		}
 	}
 	return (f[1] - f[0]) / (2 * h), nil
+}
+
+// even replaces the errors by one for all, their root mean square. Each comes
+// from few blocks and from the same toys as its value: weighting by it would pull
+// the line to the values that happen to come with small errors.
+func even(sigma []float64) {
+	rms := floats.Norm(sigma, 2) / math.Sqrt(float64(len(sigma)))
+	for i := range sigma {
+		sigma[i] = rms
+	}
 }
 
 // line is the weighted least-squares straight line through y ± sigma at x.

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/mat"
 )
@@ -80,7 +81,9 @@ type centring struct {
 	engine *Engine
 	fitter *Fitter
 	x      []float64   // variables, background parameters solved for
-	lambda []float64   // expectation at x
+	lambda []float64   // of the data, by bin
+	m      []float64   // of the data, by simulation factor
+	moves  []response  // of lambda with what is expected, by bin
 	truth  []float64   // without signal, nominal
 	slopes [][]float64 // ∂λ0/∂p of the truth, by background parameter
 	floor  []float64   // lowest value of each background parameter
@@ -92,7 +95,12 @@ func newCentring(e *Engine, held []Held) *centring {
 		fitter: e.Fitter(),
 		x:      e.nominal(),
 		lambda: make([]float64, e.bins),
+		m:      make([]float64, len(e.taus)),
+		moves:  make([]response, e.bins),
 		truth:  e.Point(0, nil).Lambda,
+	}
+	for i := range c.moves {
+		c.moves[i] = response{1, 1}
 	}
 	c.slopes = c.jacobian()
 	for _, h := range held {
@@ -114,6 +122,37 @@ func newCentring(e *Engine, held []Held) *centring {
 		c.floor = append(c.floor, floor)
 	}
 	return c
+}
+
+// response is ∂λ/∂ of the signal and of the background expected with every
+// simulation factor at 1.
+type response struct{ signal, background float64 }
+
+// expect sets lambda and m to the data at c.x. A simulation factor follows from
+// its own score equation of the truth, n + m = b0 + τ, and stays where its
+// background keeps fewestEvents.
+func (c *centring) expect() (clamped bool) {
+	for ci := range c.engine.channels {
+		ch := &c.engine.channels[ci]
+		c.fitter.expect(ci, c.x, c.lambda, false)
+		for bin, at := range ch.simulated {
+			if at.tau == 0 {
+				continue
+			}
+			i := ch.first + bin
+			b := c.fitter.spaces[ci].background[bin]
+			s := c.lambda[i] - b
+			g := (c.truth[i] + at.tau - s) / (b + at.tau)
+			c.moves[i] = response{at.tau / (b + at.tau), g * at.tau / (b + at.tau)}
+			if floor := math.Min(1, fewestEvents/c.truth[i]); g < floor {
+				g, clamped = floor, true
+				c.moves[i] = response{1, g}
+			}
+			c.lambda[i] = s + g*b
+			c.m[at.index] = g * at.tau
+		}
+	}
+	return clamped
 }
 
 // jacobian is ∂λ/∂p at c.x for each background parameter, over all bins.
@@ -138,8 +177,13 @@ func (c *centring) jacobian() [][]float64 {
 				if !ok {
 					continue
 				}
+				by := r.vals[i] * f.spaces[ci].scale[u]
 				for bin, v := range columns[u] {
-					out[k][ch.first+bin] += r.vals[i] * f.spaces[ci].scale[u] * v
+					move := c.moves[ch.first+bin].background
+					if f.spaces[ci].ofSignal[u] {
+						move = c.moves[ch.first+bin].signal
+					}
+					out[k][ch.first+bin] += move * by * v
 				}
 			}
 		}
@@ -154,7 +198,7 @@ func (c *centring) q0(mu float64) (float64, error) {
 	if err := c.solve(); err != nil {
 		return math.NaN(), err
 	}
-	rate, clamped := 0.0, false
+	rate, clamped := 0.0, c.expect()
 	for i, l := range c.lambda {
 		if l > 0 {
 			rate += deviance(l, c.truth[i])
@@ -162,6 +206,9 @@ func (c *centring) q0(mu float64) (float64, error) {
 		if l == 0 {
 			rate += c.truth[i]
 		}
+	}
+	for k, tau := range c.engine.taus {
+		rate += deviance(c.m[k], tau)
 	}
 	for k, v := range c.engine.background {
 		if c.engine.params[v-1].Constrained {
@@ -183,9 +230,7 @@ func (c *centring) solve() error {
 	n := len(e.background)
 	residual := make([]float64, n)
 	for range 100 {
-		for ci := range e.channels {
-			c.fitter.expect(ci, c.x, c.lambda, false)
-		}
+		c.expect()
 		jacobian := c.jacobian()
 		var solved []int
 		for j, v := range e.background {
@@ -246,7 +291,7 @@ func (c *centring) solve() error {
 // point is the data found: auxiliary values at the solution, those of held
 // parameters and of signals alone at nominal.
 func (c *centring) point() Point {
-	p := Point{Lambda: append([]float64(nil), c.lambda...), A: make([]float64, len(c.engine.aux))}
+	p := Point{Lambda: slices.Clone(c.lambda), A: make([]float64, len(c.engine.aux)), M: slices.Clone(c.m)}
 	for k, j := range c.engine.aux {
 		if c.engine.movesBackground[j] {
 			p.A[k] = c.x[1+j]

@@ -15,7 +15,9 @@ func TestCentre(t *testing.T) {
 	models["uncertain"], _ = uncertain(20, 120, 0.4)(1)
 	for k := range 6 {
 		models[fmt.Sprintf("random %d", k)] = several(r, 1+k%3, 3+k)
+		models[fmt.Sprintf("simulated %d", k)] = simulatedModel(r, several(r, 1+k%3, 3+k))
 	}
+	seconds := 0
 	for name, m := range models {
 		e := prepare(t, m)
 		f := e.Fitter()
@@ -28,14 +30,24 @@ func TestCentre(t *testing.T) {
 			}
 			d := c.Asimov()
 			null := f.AtFresh(d, 0)
+			// Bent rates may offer a second explanation of the data.
+			second := null.Deviance < 2*f.value(nominal, d, true)-1e-6
 			for _, v := range e.background {
-				if math.Abs(f.x[v]-nominal[v]) > 1e-4*e.params[v-1].Step {
+				if !second && math.Abs(f.x[v]-nominal[v]) > 1e-4*e.params[v-1].Step {
 					t.Errorf("%s, z = %v: background-only fit has %v = %v, truth %v", name, z, e.params[v-1].Name, f.x[v], nominal[v])
 				}
 			}
+			tolerance := 1e-5
+			if second {
+				seconds++
+				tolerance = 0.01
+			}
 			free := f.Free(d, c.Mu, math.Inf(1))
-			near(t, fmt.Sprintf("%s, z = %v: sqrt(q0)", name, z), math.Sqrt(null.Deviance-free.Deviance), z, 1e-5)
+			near(t, fmt.Sprintf("%s, z = %v: sqrt(q0)", name, z), math.Sqrt(null.Deviance-free.Deviance), z, tolerance)
 		}
+	}
+	if seconds > 6 {
+		t.Errorf("%d centres have a second explanation, want a few", seconds)
 	}
 }
 

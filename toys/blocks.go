@@ -52,7 +52,7 @@ func (r *runner) run(e *stats.Engine, proposals, blocks int, work func(w *worker
 	return r.share(blocks, func() func(int) {
 		w := &worker{
 			fit:    r.newFitter(e),
-			data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())},
+			data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary()), M: make([]float64, e.Factors())},
 			stream: newStream(),
 			logs:   make([]float64, proposals),
 		}

@@ -134,7 +134,7 @@ func deficit(e *stats.Engine, mu float64) stats.Point {
 	signal := e.Point(mu, nil)
 	f := e.Fitter()
 	at := func(kappa float64) (stats.Point, float64) {
-		p := stats.Point{Lambda: make([]float64, len(background.Lambda)), A: make([]float64, len(background.A))}
+		p := stats.Point{Lambda: make([]float64, len(background.Lambda)), A: make([]float64, len(background.A)), M: background.M}
 		for bin, l := range background.Lambda {
 			if l > 0 {
 				p.Lambda[bin] = l * math.Pow(l/signal.Lambda[bin], kappa)

@@ -2,6 +2,7 @@ package toys
 
 import (
 	"math"
+	"slices"
 
 	"lumireach/stats"
 )
@@ -14,12 +15,15 @@ type proposal struct {
 	toys   int
 }
 
+// means are the means of all Poisson counts: of bins, then of the simulation.
+func (p *proposal) means() []float64 { return slices.Concat(p.Lambda, p.M) }
+
 // mixture throws experiments from several proposals and knows the probability
 // of each experiment under every one of them.
 type mixture struct {
 	proposals []proposal
-	counts    [][]poisson // by proposal and bin
-	logRatio  [][]float64 // ln(λ/λ_reference), by proposal and bin
+	counts    [][]poisson // by proposal, of bins and then of simulation factors
+	logRatio  [][]float64 // ln(λ/λ_reference), likewise
 	offset    []float64   // what the logarithm of the density has besides
 	total     int         // toys
 }
@@ -33,12 +37,11 @@ func (r *runner) newMixture(proposals []proposal) (*mixture, error) {
 		logRatio:  make([][]float64, len(proposals)),
 		offset:    make([]float64, len(proposals)),
 	}
-	bins := len(proposals[0].Lambda)
-	reference := make([]float64, bins)
+	reference := make([]float64, len(proposals[0].means()))
 	for _, p := range proposals {
 		m.total += p.toys
-		for bin, l := range p.Lambda {
-			reference[bin] += l / float64(len(proposals))
+		for i, l := range p.means() {
+			reference[i] += l / float64(len(proposals))
 		}
 	}
 	err := r.share(len(proposals), func() func(int) {
@@ -51,12 +54,12 @@ func (m *mixture) prepare(k int, reference []float64) {
 	p := &m.proposals[k]
 	counts := make([]poisson, len(reference))
 	ratio := make([]float64, len(reference))
-	for bin, l := range p.Lambda {
-		counts[bin] = newPoisson(l, p.toys)
-		if reference[bin] > 0 {
-			ratio[bin] = math.Log(l / reference[bin])
+	for i, l := range p.means() {
+		counts[i] = newPoisson(l, p.toys)
+		if reference[i] > 0 {
+			ratio[i] = math.Log(l / reference[i])
 		}
-		m.offset[k] -= l - reference[bin]
+		m.offset[k] -= l - reference[i]
 	}
 	for _, s := range p.spread {
 		m.offset[k] -= math.Log(s)
@@ -70,6 +73,9 @@ func (m *mixture) throw(d *stats.Data, k int, s *stream) {
 	counts := m.counts[k]
 	for bin := range d.N {
 		d.N[bin] = counts[bin].draw(s)
+	}
+	for i := range d.M {
+		d.M[i] = counts[len(d.N)+i].draw(s)
 	}
 	p := &m.proposals[k]
 	for j, a := range p.A {
@@ -90,6 +96,11 @@ func (m *mixture) logDensities(dst []float64, d *stats.Data) {
 		for bin, n := range d.N {
 			if n > 0 { // 0 × ln 0 is 0 here
 				sum += n * ratio[bin]
+			}
+		}
+		for i, m := range d.M {
+			if m > 0 {
+				sum += m * ratio[len(d.N)+i]
 			}
 		}
 		for j, a := range p.A {

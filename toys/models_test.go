@@ -68,6 +68,16 @@ func uncertain(s, b, size float64) stats.Search {
 	}
 }
 
+// simulated is a count whose background comes from a simulation of so many
+// events: the same as one with a control region of that many.
+func simulated(s, b, tau float64) stats.Search {
+	return func(l float64) (stats.Model, error) {
+		m, err := count(s, b)(l)
+		m.Channels[0].Tau = []float64{tau}
+		return m, err
+	}
+}
+
 func engine(t testing.TB, search stats.Search, luminosity float64) *stats.Engine {
 	t.Helper()
 	e, err := search.Engine(luminosity)

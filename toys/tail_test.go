@@ -10,7 +10,7 @@ import (
 // P(q0 >= q) of counts against exact sums over all outcomes. On/off rows
 // DER-exact-onoff and DER-exact-known of testdata/reference/published.csv
 // (recomputed, from memory); b = 20 with twice the background in the control
-// region summed here too; with a log-normal background by sums over counts of Φ at
+// region summed here too, and the same by a simulation in the place of the control region; with a log-normal background by sums over counts of Φ at
 // the auxiliary value where q0 crosses q.
 func TestTailExact(t *testing.T) {
 	const k = 4 // quoted errors; right code fails for 1 seed in 16000 per check
@@ -33,6 +33,8 @@ func TestTailExact(t *testing.T) {
 		{"b = 20, τ = 2", double, 9, exact(9)},
 		{"b = 20, τ = 2", double, 16, exact(16)},
 		{"b = 20, τ = 2", double, 25, 3.03198e-7},
+		{"b = 20 by 40 simulated events", simulated(10, 20, 40), 16, exact(16)},
+		{"b = 20 by 40 simulated events", simulated(10, 20, 40), 25, 3.03198e-7},
 		{"b = 2, τ = 1", onOff(10, 2, 1), 9, 0.000615889},
 		{"b = 2, τ = 1", onOff(10, 2, 1), 16, 1.846958e-07},
 		{"b = 2, τ = 1", onOff(10, 2, 1), 25, 8.766176e-14},

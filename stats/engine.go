@@ -31,14 +31,6 @@ type Engine struct {
 	movesBackground []bool // by parameter
 }
 
-// scan lists starts, as offsets of one variable from its auxiliary value, for a
-// parameter that moves a signal's shape so far that the likelihood can have
-// several maxima.
-type scan struct {
-	variable int
-	offsets  []float64
-}
-
 // channel is a Channel compiled for the loop over its bins.
 type channel struct {
 	first, bins int
@@ -117,7 +109,7 @@ func Prepare(m Model) (*Engine, error) {
 		}
 	}
 	e.floating = floating(m, e.movesBackground)
-	e.scans = scans(e.floating)
+	e.scans = scans(m, e.movesBackground)
 	return e, nil
 }
 
@@ -261,74 +253,6 @@ type Floating struct {
 // Floating lists the parameters of signals alone that move a shape. They exist
 // only under the signal hypothesis (Davies, Biometrika 74 (1987) 33).
 func (e *Engine) Floating() []Floating { return e.floating }
-
-func floating(m Model, movesBackground []bool) []Floating {
-	strength := make([]float64, len(m.Params))
-	for _, c := range m.Channels {
-		for _, p := range c.Processes {
-			if !p.Signal || p.Shape == nil || p.Yield == 0 {
-				continue
-			}
-			quantities := len(p.At)
-			f := make([]float64, c.Bins)
-			d1 := make([]float64, quantities*c.Bins)
-			d2 := make([]float64, quantities*(quantities+1)/2*c.Bins)
-			p.Shape.Fill(p.At, f, d1, d2)
-			for j, q := range m.Params {
-				if !q.Constrained || movesBackground[j] {
-					continue
-				}
-				information := 0.0
-				for bin := range f {
-					slope := 0.0
-					for a, move := range p.Move {
-						for _, effect := range move {
-							if effect.Param == j {
-								slope += effect.Lin * d1[a*c.Bins+bin]
-							}
-						}
-					}
-					if f[bin] > 0 {
-						information += slope * slope / f[bin]
-					}
-				}
-				strength[j] = math.Max(strength[j], math.Sqrt(information))
-			}
-		}
-	}
-	var out []Floating
-	for j, s := range strength {
-		if s > 0 {
-			out = append(out, Floating{j, s})
-		}
-	}
-	return out
-}
-
-// scans lays starts over the parameters whose unit step changes a shape by more
-// than 0.4 standard deviations of one event. Below that the start from the
-// auxiliary values alone finds the maximum that a grid of starts finds.
-func scans(floating []Floating) []scan {
-	const (
-		enough = 0.4
-		reach  = 3 // standard deviations from the auxiliary value
-	)
-	var out []scan
-	for _, p := range floating {
-		if p.Strength < enough {
-			continue
-		}
-		steps := int(math.Min(8, math.Ceil(reach*p.Strength)))
-		sc := scan{variable: 1 + p.Param}
-		for k := -steps; k <= steps; k++ {
-			if k != 0 {
-				sc.offsets = append(sc.offsets, reach*float64(k)/float64(steps))
-			}
-		}
-		out = append(out, sc)
-	}
-	return out
-}
 
 // Point gives the expectation at signal strength mu and parameters x: of the
 // counts and of the auxiliary measurements. A nil x means nominal parameters.

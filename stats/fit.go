@@ -75,7 +75,7 @@ func (e *Engine) Fitter() *Fitter {
 		begin:     make([]float64, size),
 	}
 	for _, s := range e.scans {
-		if n := len(s.offsets); n > len(f.promises) {
+		if n := len(s.starts); n > len(f.promises) {
 			f.promises, f.strengths = make([]float64, n), make([]float64, n)
 		}
 	}
@@ -115,7 +115,7 @@ func (f *Fitter) Free(d *Data, near, maxMu float64) Fit {
 	f.variables = append(append(f.variables[:0], 0), f.engine.all...)
 	fit := f.minimise(d, 0, maxMu, false)
 	if len(f.engine.scans) > 0 {
-		fit = f.searchFree(d, fit, maxMu)
+		fit = f.search(d, fit, 0, maxMu, false, true)
 	}
 	return fit
 }
@@ -140,8 +140,8 @@ func (f *Fitter) At(d *Data, mu float64) Fit {
 		f.start(d, mu)
 	}
 	fit := f.minimise(d, mu, mu, background)
-	if !background && len(f.engine.scans) > 0 {
-		fit = f.searchAt(d, fit, mu)
+	if len(f.engine.scans) > 0 {
+		fit = f.search(d, fit, mu, mu, background, false)
 	}
 	return fit
 }

@@ -2,72 +2,205 @@ package stats
 
 import "math"
 
-// searchFree looks for a higher maximum of the likelihood of a free fit: with
-// the backgrounds of the best fit it takes the score of a signal at each start, and
-// fits from the starts that promise a local maximum.
-func (f *Fitter) searchFree(d *Data, fit Fit, maxMu float64) Fit {
-	return f.search(d, fit, func(variable int, offset float64) (promise, mu float64) {
-		f.x[0] = 0
-		f.x[variable] += offset
-		if !f.derivatives(f.x, d, false, true) {
-			return negInf, 0
-		}
-		information := f.hessian[0]
-		score := -f.gradient[0]
-		if !(information > 0) || score <= 0 {
-			return negInf, 0
-		}
-		mu = math.Min(maxMu, score/information)
-		return score*mu - information*mu*mu/2 - offset*offset/2, mu
-	}, 0, maxMu)
-}
+const (
+	searchRounds = 4
+	// better is the fall of a deviance that counts as another maximum of the
+	// likelihood.
+	better = 1e-7
+	// hopeless is how much higher half a deviance may be promised by one Newton
+	// step for a fit to begin there.
+	hopeless = 3
+)
 
-// searchAt is searchFree for a fit at a fixed mu: the likelihood at each start
-// is its promise.
-func (f *Fitter) searchAt(d *Data, fit Fit, mu float64) Fit {
-	return f.search(d, fit, func(variable int, offset float64) (float64, float64) {
-		f.x[0] = mu
-		f.x[variable] += offset
-		return -f.value(f.x, d, false), mu
-	}, mu, mu)
-}
-
-// search fits from the promising starts of every scan and keeps the best fit.
-func (f *Fitter) search(d *Data, fit Fit, promise func(variable int, offset float64) (promise, mu float64), minMu, maxMu float64) Fit {
-	best := fit
+// search looks for a higher maximum of the likelihood than a fit of d found,
+// with 0 <= minMu <= μ <= maxMu, from the starts of every scan that promise a
+// local maximum, until a round over all scans finds none. fresh tells that the
+// fit began at the auxiliary values.
+func (f *Fitter) search(d *Data, fit Fit, minMu, maxMu float64, background, fresh bool) Fit {
+	s := searching{f, d, fit, minMu, maxMu, background}
 	copy(f.best, f.x)
-	start := f.begin
-	for _, s := range f.engine.scans {
-		copy(start, f.best)
-		for k, j := range f.engine.aux {
-			if !f.engine.movesBackground[j] {
-				start[1+j] = d.A[k]
+	if !fresh {
+		f.start(d, math.Max(minMu, math.Min(f.best[0], maxMu)))
+		s.attempt()
+	}
+	for range searchRounds {
+		before := s.best.Deviance
+		for i := range f.engine.scans {
+			switch scan := &f.engine.scans[i]; {
+			case background && scan.signal:
+			case len(scan.turning) > 0:
+				s.turn(scan)
+			case scan.signal:
+				s.signal(scan)
+			default:
+				s.background(scan)
 			}
 		}
-		for k, offset := range s.offsets {
-			copy(f.x, start)
-			f.promises[k], f.strengths[k] = promise(s.variable, offset)
-		}
-		for k, offset := range s.offsets {
-			p := f.promises[k]
-			if math.IsInf(p, -1) || k > 0 && f.promises[k-1] > p || k+1 < len(s.offsets) && f.promises[k+1] >= p {
-				continue
-			}
-			copy(f.x, start)
-			f.x[0] = f.strengths[k]
-			f.x[s.variable] += offset
-			f.variables = f.variables[:0]
-			if minMu != maxMu {
-				f.variables = append(f.variables, 0)
-			}
-			f.variables = append(f.variables, f.engine.all...)
-			next := f.minimise(d, minMu, maxMu, false)
-			if next.Status == Converged && (best.Status != Converged || next.Deviance < best.Deviance) {
-				best = next
-				copy(f.best, f.x)
-			}
+		if !(s.best.Deviance < before-better) {
+			break
 		}
 	}
 	copy(f.x, f.best)
-	return best
+	return s.best
+}
+
+// searching is the state of one search; its best point is in Fitter.best.
+type searching struct {
+	*Fitter
+	data           *Data
+	best           Fit
+	minMu, maxMu   float64
+	backgroundOnly bool
+}
+
+// vary makes all of the fit's parameters variables again.
+func (s *searching) vary() {
+	s.variables = s.variables[:0]
+	if s.minMu != s.maxMu {
+		s.variables = append(s.variables, 0)
+	}
+	if s.backgroundOnly {
+		s.variables = append(s.variables, s.engine.background...)
+	} else {
+		s.variables = append(s.variables, s.engine.all...)
+	}
+}
+
+// attempt fits from x and keeps what is better.
+func (s *searching) attempt() {
+	s.vary()
+	next := s.minimise(s.data, s.minMu, s.maxMu, s.backgroundOnly)
+	if next.Status == Converged && (s.best.Status != Converged || next.Deviance < s.best.Deviance) {
+		s.best = next
+		copy(s.Fitter.best, s.x)
+	}
+}
+
+// signal tries the starts of a parameter of signals alone. In a free fit a
+// start's promise is what the score of a signal there gains, with the
+// backgrounds of the best fit; at a fixed μ it is the likelihood.
+func (s *searching) signal(scan *scan) {
+	start := s.begin
+	copy(start, s.Fitter.best)
+	for k, j := range s.engine.aux {
+		if !s.engine.movesBackground[j] {
+			start[1+j] = s.data.A[k]
+		}
+	}
+	for k, offset := range scan.starts {
+		copy(s.x, start)
+		scan.move(s.x, offset)
+		if s.minMu == s.maxMu {
+			s.x[0] = s.minMu
+			s.promises[k], s.strengths[k] = -s.value(s.x, s.data, false), s.minMu
+			continue
+		}
+		s.promises[k], s.strengths[k] = s.score(offset)
+	}
+	for k, offset := range scan.starts {
+		if s.peaks(k, len(scan.starts)) {
+			copy(s.x, start)
+			s.x[0] = s.strengths[k]
+			scan.move(s.x, offset)
+			s.attempt()
+		}
+	}
+}
+
+// score is what a signal at x gains over none, and its strength.
+func (s *searching) score(offset float64) (promise, mu float64) {
+	s.x[0] = 0
+	if !s.derivatives(s.x, s.data, false, true) {
+		return negInf, 0
+	}
+	information, score := s.hessian[0], -s.gradient[0]
+	if !(information > 0) || score <= 0 {
+		return negInf, 0
+	}
+	mu = math.Min(s.maxMu, score/information)
+	return score*mu - information*mu*mu/2 - offset*offset/2, mu
+}
+
+// peaks tells whether start k of n promises more than its neighbours.
+func (s *searching) peaks(k, n int) bool {
+	p := s.promises[k]
+	return !math.IsInf(p, -1) && !(k > 0 && s.promises[k-1] > p) && !(k+1 < n && s.promises[k+1] >= p)
+}
+
+// move adds so much of the scan's direction to x.
+func (s *scan) move(x []float64, length float64) {
+	for _, c := range s.along {
+		x[c.variable] += length * c.part
+	}
+}
+
+// background tries the starts of a direction that moves a background's shape.
+func (s *searching) background(scan *scan) {
+	for k, length := range scan.starts {
+		s.place(scan, length)
+		s.promises[k] = s.newtonPromise()
+	}
+	for k, length := range scan.starts {
+		if s.peaks(k, len(scan.starts)) && s.promises[k] > -s.best.Deviance/2-hopeless {
+			s.place(scan, length)
+			s.attempt()
+		}
+	}
+}
+
+// place sets x to the best fit with the scan's parameters at a start.
+func (s *searching) place(scan *scan, length float64) {
+	copy(s.x, s.Fitter.best)
+	for _, c := range scan.along {
+		s.x[c.variable] = 0
+		for k, j := range s.engine.aux {
+			if 1+j == c.variable {
+				s.x[c.variable] = s.data.A[k]
+			}
+		}
+	}
+	scan.move(s.x, length)
+}
+
+// newtonPromise is the likelihood that one Newton step from x promises, or that
+// of x where the Hessian is not positive.
+func (s *searching) newtonPromise() float64 {
+	s.vary()
+	if !s.derivatives(s.x, s.data, s.backgroundOnly, false) {
+		return negInf
+	}
+	promise := -s.valueHere(s.x, s.data)
+	if slope, _, ok := s.newton(s.minMu, s.maxMu); ok {
+		promise -= slope / 2
+	}
+	return promise
+}
+
+// turn tries the other values of a parameter that turns, at which one of its
+// rates is what it is in the best fit.
+func (s *searching) turn(scan *scan) {
+	const (
+		reach = 4.
+		step  = 0.25
+	)
+	variable := scan.along[0].variable
+	for i := range scan.turning {
+		effect := &scan.turning[i]
+		here := s.Fitter.best[variable]
+		same := effect.value(here)
+		last := effect.value(-reach) - same
+		for x := -reach + step; x <= reach; x += step {
+			next := effect.value(x) - same
+			if last*next <= 0 && math.Abs(x-here) > 2*step {
+				copy(s.x, s.Fitter.best)
+				s.x[variable] = x - step/2
+				if s.newtonPromise() > -s.best.Deviance/2-hopeless {
+					copy(s.x, s.Fitter.best)
+					s.x[variable] = x - step/2
+					s.attempt()
+				}
+			}
+			last = next
+		}
+	}
 }

@@ -5,8 +5,9 @@ import "math"
 // scan lists starts along one direction in which the likelihood can have
 // several maxima.
 type scan struct {
-	along  []component
-	signal bool // moves signals alone
+	along      []component
+	ofSignal   bool // of a signal's shape
+	background bool // moves a background too
 	// starts are lengths along the direction, rising: from the auxiliary values of
 	// constrained parameters, from 0 for a free one.
 	starts  []float64
@@ -40,32 +41,54 @@ func scans(m Model, movesBackground []bool) []scan {
 			return
 		}
 		for a, move := range p.Move {
-			s := scan{signal: true}
+			s := scan{ofSignal: p.Signal}
 			length := 0.0
 			for _, e := range move {
 				if m.Params[e.Param].Constrained {
 					length = math.Hypot(length, e.Lin)
 					s.along = append(s.along, component{1 + e.Param, e.Lin})
-					s.signal = s.signal && !movesBackground[e.Param]
 				} else if strength := math.Abs(e.Lin) * math.Sqrt(information[a]); strength > 0 {
-					out = include(out, scan{along: []component{{1 + e.Param, 1}}, free: true, starts: freeGrid(&m.Params[e.Param], strength)})
+					out = include(out, scan{along: []component{{1 + e.Param, 1}}, free: true, ofSignal: p.Signal, background: movesBackground[e.Param], starts: freeGrid(&m.Params[e.Param], strength)})
 				}
 			}
-			if strength := length * math.Sqrt(information[a]); strength >= enoughStrength {
-				for i := range s.along {
-					s.along[i].part /= length
-				}
-				s.starts = grid(strength, s.signal)
-				out = include(out, s)
+			if length*math.Sqrt(information[a]) < enoughStrength {
+				continue
 			}
+			if p.Signal {
+				length = s.leaveBackgrounds(length, movesBackground)
+			}
+			for i, c := range s.along {
+				s.along[i].part /= length
+				s.background = s.background || movesBackground[c.variable-1]
+			}
+			s.starts = grid(length * math.Sqrt(information[a]))
+			out = include(out, s)
 		}
 	})
 	for j := range m.Params {
 		if effects := turningEffects(m, j); len(effects) > 0 {
-			out = append(out, scan{along: []component{{1 + j, 1}}, signal: !movesBackground[j], turning: effects})
+			out = append(out, scan{along: []component{{1 + j, 1}}, background: movesBackground[j], turning: effects})
 		}
 	}
 	return out
+}
+
+// leaveBackgrounds keeps only what moves signals alone, if that is at least half
+// of the direction, and gives the length that remains.
+func (s *scan) leaveBackgrounds(length float64, movesBackground []bool) float64 {
+	var alone []component
+	rest := 0.0
+	for _, c := range s.along {
+		if !movesBackground[c.variable-1] {
+			alone = append(alone, c)
+			rest = math.Hypot(rest, c.part)
+		}
+	}
+	if rest < length/2 {
+		return length
+	}
+	s.along = alone
+	return rest
 }
 
 // include adds a scan, in the place of one along the same direction if its
@@ -92,15 +115,12 @@ func include(scans []scan, s scan) []scan {
 
 const enoughStrength = 0.4
 
-// grid spreads starts at about one shape width on both sides of the auxiliary
-// values. A signal's first fit began at those themselves.
-func grid(strength float64, signal bool) []float64 {
+// grid spreads starts at about one shape width about the auxiliary values.
+func grid(strength float64) []float64 {
 	steps := int(math.Min(8, math.Ceil(farthestStart*strength)))
 	var out []float64
 	for k := -steps; k <= steps; k++ {
-		if k != 0 || !signal {
-			out = append(out, farthestStart*float64(k)/float64(steps))
-		}
+		out = append(out, farthestStart*float64(k)/float64(steps))
 	}
 	return out
 }

@@ -17,7 +17,7 @@ const (
 // local maximum, until a round over all scans finds none. fresh tells that the
 // fit began at the auxiliary values.
 func (f *Fitter) search(d *Data, fit Fit, minMu, maxMu float64, background, fresh bool) Fit {
-	s := searching{f, d, fit, minMu, maxMu, background}
+	s := searching{f, d, fit, minMu, maxMu, background, fresh}
 	copy(f.best, f.x)
 	if !fresh {
 		f.start(d, math.Max(minMu, math.Min(f.best[0], maxMu)))
@@ -27,13 +27,13 @@ func (f *Fitter) search(d *Data, fit Fit, minMu, maxMu float64, background, fres
 		before := s.best.Deviance
 		for i := range f.engine.scans {
 			switch scan := &f.engine.scans[i]; {
-			case background && scan.signal:
+			case background && !scan.background:
 			case len(scan.turning) > 0:
 				s.turn(scan)
-			case scan.signal:
+			case scan.ofSignal && !background:
 				s.signal(scan)
 			default:
-				s.background(scan)
+				s.shift(scan)
 			}
 		}
 		if !(s.best.Deviance < before-better) {
@@ -51,6 +51,7 @@ type searching struct {
 	best           Fit
 	minMu, maxMu   float64
 	backgroundOnly bool
+	fresh          bool
 }
 
 // vary makes all of the fit's parameters variables again.
@@ -76,39 +77,35 @@ func (s *searching) attempt() {
 	}
 }
 
-// signal tries the starts of a parameter of signals alone. In a free fit a
-// start's promise is what the score of a signal there gains, with the
-// backgrounds of the best fit; at a fixed μ it is the likelihood.
+// signal tries the starts of a direction that moves a signal's shape. In a free
+// fit a start's promise is the likelihood without signal and what the score of a
+// signal there gains, with the other parameters of the best fit; at a fixed μ it
+// is the likelihood.
 func (s *searching) signal(scan *scan) {
-	start := s.begin
-	copy(start, s.Fitter.best)
-	for k, j := range s.engine.aux {
-		if !s.engine.movesBackground[j] {
-			start[1+j] = s.data.A[k]
-		}
-	}
-	for k, offset := range scan.starts {
-		copy(s.x, start)
-		scan.move(s.x, offset)
+	for k, length := range scan.starts {
+		s.place(scan, length)
 		if s.minMu == s.maxMu {
 			s.x[0] = s.minMu
 			s.promises[k], s.strengths[k] = -s.value(s.x, s.data, false), s.minMu
 			continue
 		}
-		s.promises[k], s.strengths[k] = s.score(offset)
+		s.promises[k], s.strengths[k] = s.score()
 	}
-	for k, offset := range scan.starts {
+	for k, length := range scan.starts {
+		if length == 0 && s.fresh {
+			continue // the first fit began there
+		}
 		if s.peaks(k, len(scan.starts)) {
-			copy(s.x, start)
+			s.place(scan, length)
 			s.x[0] = s.strengths[k]
-			scan.move(s.x, offset)
 			s.attempt()
 		}
 	}
 }
 
-// score is what a signal at x gains over none, and its strength.
-func (s *searching) score(offset float64) (promise, mu float64) {
+// score is the likelihood at x without signal and what a signal there gains,
+// with its strength.
+func (s *searching) score() (promise, mu float64) {
 	s.x[0] = 0
 	if !s.derivatives(s.x, s.data, false, true) {
 		return negInf, 0
@@ -118,7 +115,7 @@ func (s *searching) score(offset float64) (promise, mu float64) {
 		return negInf, 0
 	}
 	mu = math.Min(s.maxMu, score/information)
-	return score*mu - information*mu*mu/2 - offset*offset/2, mu
+	return score*mu - information*mu*mu/2 - s.valueHere(s.x, s.data), mu
 }
 
 // peaks tells whether start k of n promises more than its neighbours.
@@ -134,8 +131,8 @@ func (s *scan) move(x []float64, length float64) {
 	}
 }
 
-// background tries the starts of a direction that moves a background's shape.
-func (s *searching) background(scan *scan) {
+// shift tries the starts of a direction that moves a background's shape.
+func (s *searching) shift(scan *scan) {
 	for k, length := range scan.starts {
 		s.place(scan, length)
 		s.promises[k] = s.newtonPromise()

@@ -56,16 +56,27 @@ const fewestEvents = 0.3
 // then by a fit, is z² all the same.
 func (e *Engine) Centre(z float64, held ...Held) (Centre, error) {
 	c := newCentring(e, held)
-	// sqrt(q0) is nearly proportional to μ: a few steps of the secant.
+	mu, err := toRoot(z, c.q0)
+	if err != nil {
+		return Centre{}, fmt.Errorf("most probable background-only data at %v standard deviations: %w", z, err)
+	}
+	return Centre{c.point(), mu, c.spread()}, nil
+}
+
+var errUnsolved = errors.New("the score equations did not converge")
+
+// toRoot is the μ at which q0 is z². Its root is nearly proportional to μ: a few
+// steps of the secant.
+func toRoot(z float64, q0 func(mu float64) (float64, error)) (float64, error) {
 	mu, lastMu, lastRoot := 1.0, 0.0, 0.0
 	for range 100 {
-		q, err := c.q0(mu)
+		q, err := q0(mu)
 		if err != nil {
-			return Centre{}, fmt.Errorf("most probable background-only data at %v standard deviations: %w", z, err)
+			return math.NaN(), err
 		}
 		root := math.Sqrt(q)
 		if math.Abs(root-z) < 1e-8*z {
-			return Centre{c.point(), mu, c.spread()}, nil
+			return mu, nil
 		}
 		next := mu + (z-root)*(mu-lastMu)/(root-lastRoot)
 		if !(next > mu/4 && next < 4*mu) {
@@ -73,7 +84,7 @@ func (e *Engine) Centre(z float64, held ...Held) (Centre, error) {
 		}
 		mu, lastMu, lastRoot = next, mu, root
 	}
-	return Centre{}, fmt.Errorf("no background-only data are found at %v standard deviations", z)
+	return math.NaN(), errors.New("none are found")
 }
 
 // centring is the state of one search for a Centre.
@@ -274,18 +285,24 @@ func (c *centring) solve() error {
 		}
 		moved := 0.0
 		for r, j := range solved {
-			v := e.background[j]
-			unit := e.params[v-1].Step
-			move := math.Max(-5*unit, math.Min(5*unit, step.AtVec(r)))
-			to := math.Min(e.params[v-1].Upper, math.Max(c.floor[j], c.x[v]+move))
-			moved = math.Max(moved, math.Abs(to-c.x[v])/unit)
-			c.x[v] = to
+			moved = math.Max(moved, c.advance(c.x, e.background[j], step.AtVec(r), c.floor[j]))
 		}
 		if moved < 1e-11 {
 			return nil
 		}
 	}
-	return errors.New("the score equations did not converge")
+	return errUnsolved
+}
+
+// advance moves one variable by a step, by no more than five of its own and
+// within its bounds, and tells by how many of them.
+func (c *centring) advance(x []float64, v int, step, floor float64) float64 {
+	p := &c.engine.params[v-1]
+	move := math.Max(-5*p.Step, math.Min(5*p.Step, step))
+	to := math.Min(p.Upper, math.Max(floor, x[v]+move))
+	moved := math.Abs(to-x[v]) / p.Step
+	x[v] = to
+	return moved
 }
 
 // point is the data found: auxiliary values at the solution, those of held

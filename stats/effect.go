@@ -2,11 +2,11 @@ package stats
 
 import "math"
 
-// bend is g(x) = (3x² - x⁴)/2 within ±1 and |x| beyond, with its first and
+// Bend is g(x) = (3x² - x⁴)/2 within ±1 and |x| beyond, with its first and
 // second derivative: what a parameter that changes something by unequal factors
 // up and down adds to the straight line through both. It is continuous with its
 // first derivative.
-func bend(x float64) (value, slope, curvature float64) {
+func Bend(x float64) (value, slope, curvature float64) {
 	switch {
 	case x >= 1:
 		return x, 1, 0
@@ -22,7 +22,7 @@ func (e *Effect) value(x float64) float64 {
 	if e.Bend == 0 {
 		return e.Lin * x
 	}
-	g, _, _ := bend(e.Scale * x)
+	g, _, _ := Bend(e.Scale * x)
 	return e.Lin*x + e.Bend*g
 }
 
@@ -31,7 +31,7 @@ func (e *Effect) slope(x float64) float64 {
 	if e.Bend == 0 {
 		return e.Lin
 	}
-	_, slope, _ := bend(e.Scale * x)
+	_, slope, _ := Bend(e.Scale * x)
 	return e.Lin + e.Bend*e.Scale*slope
 }
 
@@ -40,13 +40,13 @@ func (e *Effect) curvature(x float64) float64 {
 	if e.Bend == 0 {
 		return 0
 	}
-	_, _, curvature := bend(e.Scale * x)
+	_, _, curvature := Bend(e.Scale * x)
 	return e.Bend * e.Scale * e.Scale * curvature
 }
 
 // turns tells whether the effect changes its direction somewhere: two values
 // of the parameter then do the same, and a likelihood can have two maxima.
 func (e *Effect) turns() bool {
-	const steepest = math.Sqrt2 // slope of bend, at x = √½
+	const steepest = math.Sqrt2 // slope of Bend, at x = √½
 	return math.Abs(e.Bend)*e.Scale*steepest > math.Abs(e.Lin)
 }

@@ -23,13 +23,11 @@ func BenchmarkToys(b *testing.B) {
 			b.Run(fmt.Sprintf("%s/%s-q0", s.name, kind.name), func(b *testing.B) {
 				m := mixtureOf(b, []proposal{{Point: e.Point(kind.mu, nil), toys: tableDraws}})
 				f := e.Fitter()
-				stream := newStream()
-				stream.restart(key{seed: 1})
-				d := stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())}
+				w := testWorker(e, 1)
 				b.ReportAllocs()
 				for b.Loop() {
-					m.throw(&d, 0, stream)
-					if _, status := f.Q0(&d, kind.mu); status != stats.Converged {
+					m.throw(w, 0)
+					if _, status := f.Q0(&w.data, kind.mu); status != stats.Converged {
 						b.Fatal(status.Err())
 					}
 				}
@@ -43,13 +41,11 @@ func BenchmarkToys(b *testing.B) {
 			}
 			m := mixtureOf(b, []proposal{{Point: e.Point(0, nil), toys: tableDraws}})
 			f := e.Fitter()
-			stream := newStream()
-			stream.restart(key{seed: 1})
-			d := stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())}
+			w := testWorker(e, 1)
 			b.ReportAllocs()
 			for b.Loop() {
-				m.throw(&d, 0, stream)
-				if _, status := f.QTilde(&d, mu, f.Free(&d, 0, math.Inf(1))); status != stats.Converged {
+				m.throw(w, 0)
+				if _, status := f.QTilde(&w.data, mu, f.Free(&w.data, 0, math.Inf(1))); status != stats.Converged {
 					b.Fatal(status.Err())
 				}
 			}

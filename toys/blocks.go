@@ -38,6 +38,20 @@ type worker struct {
 	data   stats.Data
 	stream *stream
 	logs   []float64
+	drawn  *drawnToy // nil where parameters are fixed
+}
+
+func newWorker(e *stats.Engine, f fitter, proposals int, ensemble Nuisances) *worker {
+	w := &worker{
+		fit:    f,
+		data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary()), M: make([]float64, e.Factors())},
+		stream: newStream(),
+		logs:   make([]float64, proposals),
+	}
+	if ensemble == Drawn {
+		w.drawn = newDrawnToy(e)
+	}
+	return w
 }
 
 const (
@@ -50,12 +64,7 @@ const (
 // it and whenever.
 func (r *runner) run(e *stats.Engine, proposals, blocks int, work func(w *worker, block int)) error {
 	return r.share(blocks, func() func(int) {
-		w := &worker{
-			fit:    r.newFitter(e),
-			data:   stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary()), M: make([]float64, e.Factors())},
-			stream: newStream(),
-			logs:   make([]float64, proposals),
-		}
+		w := newWorker(e, r.newFitter(e), proposals, r.config.Nuisances)
 		return func(block int) { work(w, block) }
 	})
 }

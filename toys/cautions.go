@@ -50,6 +50,7 @@ func cautions(r *ReachResult, engines []*stats.Engine, p plateaus) []string {
 	if tails {
 		out.say("Where a significance lies beyond the tail that the toys are trusted with, only a lower bound is given.")
 	}
+	out.simulation(engines)
 	out.failures(failed, thrown)
 	for _, c := range r.Checks {
 		if math.Abs(c.Pull) > suspicious {
@@ -82,6 +83,7 @@ func bandsCautions(r *BandsResult, engines []*stats.Engine) []string {
 	}
 	out.fewEvents(smallest, at)
 	out.impossibleLimits(r.Config, formulas, engines)
+	out.simulation(engines)
 	out.failures(failed, thrown)
 	out.always(r.Config)
 	return out
@@ -110,6 +112,13 @@ func (l *list) impossibleLimits(c Config, formulas []Exclusion, engines []*stats
 			l.say("Some limits of the formulas lie below %.4g signal events: without systematic uncertainties no true %v %% CLs limit can.", least, 100*c.Confidence)
 			return
 		}
+	}
+}
+
+// simulation tells of an uncertainty that no luminosity removes.
+func (l *list) simulation(engines []*stats.Engine) {
+	if engines[0].Factors() > 0 {
+		l.say("The statistical errors of simulated templates do not shrink with luminosity, only with more simulated events.")
 	}
 }
 

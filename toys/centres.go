@@ -51,7 +51,7 @@ func (s span) levels() []level {
 func (r *runner) tailProposals(e *stats.Engine, wanted span, toys, finer int) ([]proposal, error) {
 	// Two toys at least, for a variance within each proposal.
 	count := func(share float64) int { return max(2, int(math.Round(share*float64(toys)))) }
-	out := []proposal{{Point: e.Point(0, nil), toys: count(nullShare)}}
+	out := []proposal{r.at(e, 0, count(nullShare))}
 	levels := wanted.levels()
 	sum := 0.0
 	for _, l := range levels {
@@ -78,15 +78,25 @@ func (r *runner) tailProposals(e *stats.Engine, wanted span, toys, finer int) ([
 	err := r.share(len(out)-1, func() func(int) {
 		return func(k int) {
 			p := places[k+1]
-			c, err := e.Centre(p.z, p.held...)
-			failures[k+1] = err
-			out[k+1].Point, out[k+1].spread, out[k+1].near = c.Point, c.Spread, c.Mu
+			failures[k+1] = out[k+1].centre(e, r.config.Nuisances, p.z, p.held)
 		}
 	})
 	if err := errors.Join(append(failures, err)...); err != nil {
 		return nil, fmt.Errorf("toys for a tail: %w", err)
 	}
 	return out, nil
+}
+
+// centre puts a proposal at the most probable background-only data of q0 = z².
+func (p *proposal) centre(e *stats.Engine, ensemble Nuisances, z float64, held []stats.Held) error {
+	if ensemble == Drawn {
+		c, err := e.DrawnCentre(z, held...)
+		p.near, p.drawn = c.Mu, &parameters{theta: c.Theta, gamma: c.Gamma, tilt: c.Tilt}
+		return err
+	}
+	c, err := e.Centre(z, held...)
+	p.Point, p.spread, p.near = c.Point, c.Spread, c.Mu
+	return err
 }
 
 // stratum holds the floating shape parameters of signals at one place.

@@ -26,10 +26,25 @@ type Config struct {
 	// Within bounds the time of Precision; zero means no bound. What was reached
 	// by then is the result.
 	Within time.Duration
+	// Nuisances says what toys do with nuisance parameters. Empty means Fixed.
+	Nuisances Nuisances
 	// Progress, where not nil, is told how much of the work is done. It is
 	// called from one goroutine at a time.
 	Progress func(Progress)
 }
+
+// Nuisances is an ensemble of toys.
+type Nuisances string
+
+const (
+	// Fixed toys have their parameters at nominal; auxiliary measurements
+	// fluctuate.
+	Fixed Nuisances = "fixed"
+	// Drawn toys draw constrained parameters and simulation factors anew from
+	// what is known of them; auxiliary measurements stay at nominal (Cousins &
+	// Highland, Nucl. Instrum. Meth. A320 (1992) 331).
+	Drawn Nuisances = "drawn"
+)
 
 // Progress of a run, in pseudo-experiments.
 type Progress struct {

@@ -36,14 +36,14 @@ func (r *runner) throw(e *stats.Engine, luminosity float64, use purpose, proposa
 		for component := range proposals {
 			w.stream.restart(key{r.config.Seed, use, luminosity, component, block})
 			for range m.inBlock(component, block, blocks) {
-				m.throw(&w.data, component, w.stream)
+				m.throw(w, component)
 				q, status := w.fit.Q0(&w.data, proposals[component].near)
 				if status != stats.Converged {
 					q = math.NaN()
 				}
 				weight := 1.0
 				if len(proposals) > 1 {
-					m.logDensities(w.logs, &w.data)
+					m.logDensities(w)
 					m.balance(w.logs)
 					weight = w.logs[0]
 				}
@@ -59,7 +59,7 @@ func (r *runner) throw(e *stats.Engine, luminosity float64, use purpose, proposa
 // signal throws signal-plus-background toys.
 func (r *runner) signal(e *stats.Engine, luminosity float64, toys int) (*ranked, error) {
 	mu := r.config.Mu
-	s, err := r.throw(e, luminosity, signalToys, []proposal{{Point: e.Point(mu, nil), near: mu, toys: toys}})
+	s, err := r.throw(e, luminosity, signalToys, []proposal{r.at(e, mu, toys)})
 	if err != nil {
 		return nil, err
 	}

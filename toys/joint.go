@@ -29,11 +29,11 @@ func (s *jointSample) at(p place) *limitToy { return &s.blocks[p.block][p.toy] }
 
 // joint throws one sample.
 func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes []float64, each int) (*jointSample, error) {
-	proposals := []proposal{{Point: e.Point(0, nil), toys: each}}
+	proposals := []proposal{r.at(e, 0, each)}
 	for _, mu := range nodes {
-		proposals = append(proposals, proposal{Point: e.Point(mu, nil), near: mu, toys: each})
+		proposals = append(proposals, r.at(e, mu, each))
 	}
-	proposals = append(proposals, proposal{Point: deficit(e, nodes[len(nodes)/2]), toys: each})
+	proposals = append(proposals, r.pulledTo(e, deficit(e, nodes[len(nodes)/2]), each))
 	m, err := r.newMixture(proposals)
 	if err != nil {
 		return nil, err
@@ -52,8 +52,8 @@ func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes [
 			for range m.inBlock(component, block, blocks) {
 				toy := limitToy{q: memory[:len(nodes):len(nodes)], weight: memory[len(nodes) : len(nodes)+hypotheses]}
 				memory = memory[len(nodes)+hypotheses:]
-				m.throw(&w.data, component, w.stream)
-				m.logDensities(w.logs, &w.data)
+				m.throw(w, component)
+				m.logDensities(w)
 				m.balance(w.logs)
 				copy(toy.weight, w.logs)
 				free := w.fit.Free(&w.data, proposals[component].near, math.Inf(1))

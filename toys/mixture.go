@@ -12,6 +12,7 @@ type proposal struct {
 	stats.Point
 	spread []float64 // standard deviations of the auxiliary measurements; nil for 1
 	near   float64   // signal strength that its data look like, where fits begin
+	drawn  *parameters
 	toys   int
 }
 
@@ -44,6 +45,10 @@ func (r *runner) newMixture(proposals []proposal) (*mixture, error) {
 			reference[i] += l / float64(len(proposals))
 		}
 	}
+	if proposals[0].drawn != nil {
+		m.prepareDrawn()
+		return m, nil
+	}
 	err := r.share(len(proposals), func() func(int) {
 		return func(k int) { m.prepare(k, reference) }
 	})
@@ -67,10 +72,14 @@ func (m *mixture) prepare(k int, reference []float64) {
 	m.counts[k], m.logRatio[k] = counts, ratio
 }
 
-// throw fills d with an experiment from proposal k: Poisson counts, normal
+// throw fills w.data with an experiment from proposal k: Poisson counts, normal
 // auxiliary measurements.
-func (m *mixture) throw(d *stats.Data, k int, s *stream) {
-	counts := m.counts[k]
+func (m *mixture) throw(w *worker, k int) {
+	if w.drawn != nil {
+		m.throwDrawn(w, k)
+		return
+	}
+	d, s, counts := &w.data, w.stream, m.counts[k]
 	for bin := range d.N {
 		d.N[bin] = counts[bin].draw(s)
 	}
@@ -87,9 +96,14 @@ func (m *mixture) throw(d *stats.Data, k int, s *stream) {
 	}
 }
 
-// logDensities sets dst[k] to the logarithm of the probability density of d
-// under proposal k, up to a term that is the same for all.
-func (m *mixture) logDensities(dst []float64, d *stats.Data) {
+// logDensities sets w.logs[k] to the logarithm of the probability density of
+// w's experiment under proposal k, up to a term that is the same for all.
+func (m *mixture) logDensities(w *worker) {
+	if w.drawn != nil {
+		m.logDrawn(w)
+		return
+	}
+	d := &w.data
 	for k, ratio := range m.logRatio {
 		p := &m.proposals[k]
 		sum := m.offset[k]
@@ -110,7 +124,7 @@ func (m *mixture) logDensities(dst []float64, d *stats.Data) {
 			}
 			sum -= z * z / 2
 		}
-		dst[k] = sum
+		w.logs[k] = sum
 	}
 }
 

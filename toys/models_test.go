@@ -98,6 +98,12 @@ func testRunner(t testing.TB, c Config) *runner {
 	return newRunner(context.Background(), c)
 }
 
+func testWorker(e *stats.Engine, seed uint64) *worker {
+	w := newWorker(e, e.Fitter(), 2, Fixed)
+	w.stream.restart(key{seed: seed})
+	return w
+}
+
 func mixtureOf(t testing.TB, proposals []proposal) *mixture {
 	t.Helper()
 	m, err := testRunner(t, Config{}).newMixture(proposals)

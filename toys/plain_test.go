@@ -31,7 +31,7 @@ func TestPlainToys(t *testing.T) {
 		w.stream.restart(key{59, signalToys, 1, 0, block})
 		tally := make([]int, len(thresholds))
 		for range starts[block+1] - starts[block] {
-			m.throw(&w.data, 0, w.stream)
+			m.throw(w, 0)
 			q, status := w.fit.Q0(&w.data, 0)
 			if status != stats.Converged {
 				failed[block]++

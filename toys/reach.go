@@ -48,6 +48,12 @@ func (c *Config) complete() error {
 	if !(c.Confidence > 0.5 && c.Confidence < 1) {
 		return fmt.Errorf("confidence is %v, must lie between 0.5 and 1", c.Confidence)
 	}
+	if c.Nuisances == "" {
+		c.Nuisances = Fixed
+	}
+	if c.Nuisances != Fixed && c.Nuisances != Drawn {
+		return fmt.Errorf("nuisances are %q, must be %q or %q", c.Nuisances, Fixed, Drawn)
+	}
 	return nil
 }
 

@@ -86,7 +86,7 @@ func TestCoverage(t *testing.T) {
 		err := r.run(e, 1, blocks, func(w *worker, block int) {
 			w.stream.restart(key{31, use, strength, 0, block})
 			for i := starts[block]; i < starts[block+1]; i++ {
-				m.throw(&w.data, 0, w.stream)
+				m.throw(w, 0)
 				q, status := w.fit.QTilde(&w.data, mu, w.fit.Free(&w.data, strength, math.Inf(1)))
 				if status != stats.Converged {
 					t.Errorf("toy %d of μ = %v: %v", i, strength, status.Err())
@@ -347,15 +347,12 @@ func TestToysAllocateNothing(t *testing.T) {
 	e := engine(t, scenario(t, "window"), 1)
 	m := mixtureOf(t, []proposal{{Point: e.Point(0, nil), toys: 1}, {Point: e.Point(1, nil), toys: 1}})
 	f := e.Fitter()
-	s := newStream()
-	s.restart(key{seed: 1})
-	d := stats.Data{N: make([]float64, e.Bins()), A: make([]float64, e.Auxiliary())}
-	logs := make([]float64, 2)
+	w := testWorker(e, 1)
 	if a := testing.AllocsPerRun(20, func() {
-		m.throw(&d, 1, s)
-		m.logDensities(logs, &d)
-		m.balance(logs)
-		f.Q0(&d, 1)
+		m.throw(w, 1)
+		m.logDensities(w)
+		m.balance(w.logs)
+		f.Q0(&w.data, 1)
 	}); a != 0 {
 		t.Errorf("a toy allocates %v times, want 0", a)
 	}

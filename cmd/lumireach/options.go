@@ -32,6 +32,7 @@ func runFlags() []cli.Flag {
 		&cli.StringFlag{Name: "to", Usage: "last of --points luminosities"},
 		&cli.StringFlag{Name: "points", Usage: "how many luminosities between --from and --to"},
 		&cli.StringFlag{Name: "confidence", Value: "0.95", Usage: "of limits"},
+		&cli.StringFlag{Name: "nuisances", Value: string(toys.Fixed), Usage: "of toys: fixed, with auxiliary measurements that fluctuate, or drawn anew for every toy"},
 	}
 }
 
@@ -92,6 +93,10 @@ func config(c *cli.Context, s *physics.Scenario) (toys.Config, error) {
 	}
 	if !(out.Confidence > 0.5 && out.Confidence < 1) {
 		return out, usagef("--confidence is %v, must lie between 0.5 and 1, such as 0.95", out.Confidence)
+	}
+	out.Nuisances = toys.Nuisances(c.String("nuisances"))
+	if out.Nuisances != toys.Fixed && out.Nuisances != toys.Drawn {
+		return out, usagef("--nuisances is %q, must be %s or %s", out.Nuisances, toys.Fixed, toys.Drawn)
 	}
 	if c.IsSet("mu") {
 		if out.Mu, err = number(c, "mu"); err != nil {

@@ -41,7 +41,7 @@ type settingsJSON struct {
 }
 
 func settingsOf(c toys.Config) settingsJSON {
-	return settingsJSON{c.Seed, c.Toys, optional(c.Mu), number(c.Confidence), "fixed"}
+	return settingsJSON{c.Seed, c.Toys, optional(c.Mu), number(c.Confidence), string(c.Nuisances)}
 }
 
 type bandJSON struct {

@@ -34,7 +34,7 @@ func settings(c toys.Config, exclusionOnly bool) string {
 	if c.Toys == 0 {
 		parts = append(parts, "formulas only")
 	} else {
-		parts = append(parts, fmt.Sprintf("%d toys", c.Toys), fmt.Sprintf("seed %d", c.Seed))
+		parts = append(parts, fmt.Sprintf("%d toys", c.Toys), fmt.Sprintf("nuisances %s", c.Nuisances), fmt.Sprintf("seed %d", c.Seed))
 	}
 	return strings.Join(parts, " · ")
 }

@@ -67,7 +67,7 @@ func thrown() *toys.Answer {
 
 func fullReach() *toys.ReachResult {
 	return &toys.ReachResult{
-		Config: toys.Config{Luminosities: []float64{30, 300}, Toys: 5000, Seed: 7, Mu: 1.5, Confidence: 0.95},
+		Config: toys.Config{Luminosities: []float64{30, 300}, Toys: 5000, Seed: 7, Mu: 1.5, Confidence: 0.95, Nuisances: toys.Fixed},
 		Points: []toys.Point{
 			{Luminosity: 30, Formula: formula(), Toys: thrown(), SmallestCount: 0.4},
 			{Luminosity: 300, Formula: formula(), Toys: thrown(), SmallestCount: 4},
@@ -120,7 +120,7 @@ func reachWithGaps() *toys.ReachResult {
 	x.Why = "too few toys: 12 of 100 resampled sets give no limit"
 
 	return &toys.ReachResult{
-		Config: toys.Config{Luminosities: []float64{2, 40}, Toys: 200, Seed: 18446744073709551615, Mu: 1, Confidence: 0.9},
+		Config: toys.Config{Luminosities: []float64{2, 40}, Toys: 200, Seed: 18446744073709551615, Mu: 1, Confidence: 0.9, Nuisances: toys.Drawn},
 		Points: []toys.Point{
 			{Luminosity: 2, Formula: first, Toys: firstToys, SmallestCount: 0.001},
 			{Luminosity: 40, Formula: second, Toys: secondToys, SmallestCount: 0.02},

@@ -1,0 +1,140 @@
+package toys
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/stat/distuv"
+
+	"lumireach/stats"
+)
+
+// parameters say where the nuisance parameters of a proposal are drawn from, and
+// what is expected with them.
+type parameters struct {
+	mu    float64
+	theta []float64 // means of the constrained parameters, of unit standard deviation
+	gamma []float64 // modes of the simulation factors
+	tilt  []float64 // by bin: factor on the expectation; nil for 1
+
+	logTilt []float64
+}
+
+// at is a proposal at nominal parameters, or where they are drawn from what is
+// known of them.
+func (r *runner) at(e *stats.Engine, mu float64, toys int) proposal {
+	p := proposal{Point: e.Point(mu, nil), near: mu, toys: toys}
+	if r.config.Nuisances == Drawn {
+		p.drawn = nominal(e)
+		p.drawn.mu = mu
+	}
+	return p
+}
+
+// pulledTo is a proposal whose counts are expected at a point.
+func (r *runner) pulledTo(e *stats.Engine, point stats.Point, toys int) proposal {
+	p := proposal{Point: point, toys: toys}
+	if r.config.Nuisances == Drawn {
+		p.drawn = nominal(e)
+		p.drawn.tilt = make([]float64, e.Bins())
+		for bin, l := range e.Point(0, nil).Lambda {
+			p.drawn.tilt[bin] = 1
+			if l > 0 {
+				p.drawn.tilt[bin] = point.Lambda[bin] / l
+			}
+		}
+	}
+	return p
+}
+
+func nominal(e *stats.Engine) *parameters {
+	p := &parameters{theta: make([]float64, e.Auxiliary()), gamma: make([]float64, e.Factors())}
+	for i := range p.gamma {
+		p.gamma[i] = 1
+	}
+	return p
+}
+
+// drawnToy is the parameters of one toy and what is expected with them.
+type drawnToy struct {
+	split                 *stats.Fitter
+	taus, theta, gamma    []float64
+	signal, background    []float64
+	expected, logExpected []float64
+}
+
+func newDrawnToy(e *stats.Engine) *drawnToy {
+	bins := func() []float64 { return make([]float64, e.Bins()) }
+	return &drawnToy{
+		split: e.Fitter(), taus: e.Taus(),
+		theta: make([]float64, e.Auxiliary()), gamma: make([]float64, e.Factors()),
+		signal: bins(), background: bins(), expected: bins(), logExpected: bins(),
+	}
+}
+
+// throwDrawn draws a toy's parameters, then its counts. What is known of a
+// simulation factor after τ events is Gamma(τ+1, 1/τ).
+func (m *mixture) throwDrawn(w *worker, k int) {
+	p, t := m.proposals[k].drawn, w.drawn
+	for j, mean := range p.theta {
+		t.theta[j] = mean + w.stream.NormFloat64()
+	}
+	for i, mode := range p.gamma {
+		t.gamma[i] = distuv.Gamma{Alpha: t.taus[i] + 1, Beta: t.taus[i] / mode, Src: w.stream.source}.Rand()
+	}
+	t.split.Split(t.theta, t.gamma, t.signal, t.background)
+	for bin := range w.data.N {
+		mean := p.mu*t.signal[bin] + t.background[bin]
+		if p.tilt != nil {
+			mean *= p.tilt[bin]
+		}
+		count := newPoisson(mean, 1)
+		w.data.N[bin] = count.draw(w.stream)
+	}
+	clear(w.data.A)
+	copy(w.data.M, t.taus)
+}
+
+func (m *mixture) prepareDrawn() {
+	for k := range m.proposals {
+		p := m.proposals[k].drawn
+		for _, tilt := range p.tilt {
+			p.logTilt = append(p.logTilt, math.Log(tilt))
+		}
+	}
+}
+
+// logDrawn is logDensities over parameters and counts.
+func (m *mixture) logDrawn(w *worker) {
+	t := w.drawn
+	last := math.NaN()
+	for k := range m.proposals {
+		p := m.proposals[k].drawn
+		if p.mu != last {
+			last = p.mu
+			for bin, b := range t.background {
+				t.expected[bin] = p.mu*t.signal[bin] + b
+				t.logExpected[bin] = math.Log(t.expected[bin])
+			}
+		}
+		sum := 0.0
+		for j, mean := range p.theta {
+			z := t.theta[j] - mean
+			sum -= z * z / 2
+		}
+		for i, mode := range p.gamma {
+			sum -= (t.taus[i]+1)*math.Log(mode) + t.taus[i]*t.gamma[i]/mode
+		}
+		for bin, n := range w.data.N {
+			mean, logMean := t.expected[bin], t.logExpected[bin]
+			if p.tilt != nil {
+				mean *= p.tilt[bin]
+				logMean += p.logTilt[bin]
+			}
+			sum -= mean
+			if n > 0 {
+				sum += n * logMean
+			}
+		}
+		w.logs[k] = sum
+	}
+}

@@ -22,7 +22,13 @@ func (e *Engine) MedianZ(mu float64) (float64, error) {
 	if e.Bare() > 0 && mu > 0 {
 		return math.NaN(), ErrOneEvent
 	}
-	fit := e.Fitter().AtFresh(e.Point(mu, nil).Asimov(), 0)
+	d := e.Point(mu, nil).Asimov()
+	for i, background := range e.Point(0, nil).Lambda {
+		if background == 0 {
+			d.N[i] = 0 // what is expected there is negligible, or Bare would tell
+		}
+	}
+	fit := e.Fitter().AtFresh(d, 0)
 	if err := fit.Status.Err(); err != nil {
 		return math.NaN(), fmt.Errorf("background-only fit of the expected data: %w", err)
 	}

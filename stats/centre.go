@@ -55,7 +55,7 @@ const fewestEvents = 0.3
 // fewestEvents (or its nominal, if less) it stays there, and μ rises until q0,
 // then by a fit, is z² all the same.
 func (e *Engine) Centre(z float64, held ...Held) (Centre, error) {
-	c := newCentring(e, held)
+	c := newCentring(e, 0, held)
 	mu, err := toRoot(z, c.q0)
 	if err != nil {
 		return Centre{}, fmt.Errorf("most probable background-only data at %v standard deviations: %w", z, err)
@@ -87,29 +87,101 @@ func toRoot(z float64, q0 func(mu float64) (float64, error)) (float64, error) {
 	return math.NaN(), errors.New("none are found")
 }
 
-// centring is the state of one search for a Centre.
-type centring struct {
-	engine *Engine
-	fitter *Fitter
-	x      []float64   // variables, background parameters solved for
-	lambda []float64   // of the data, by bin
-	m      []float64   // of the data, by simulation factor
-	moves  []response  // of lambda with what is expected, by bin
-	truth  []float64   // without signal, nominal
-	slopes [][]float64 // ∂λ0/∂p of the truth, by background parameter
-	floor  []float64   // lowest value of each background parameter
+// Deficit gives the most probable data of signal strength mu that look like a
+// lower one, or a negative one, z standard deviations down: twice their
+// large-deviation rate is z², or less where a bin would lose nearly all that is
+// expected there. The score equations are those of Centre.
+func (e *Engine) Deficit(mu, z float64) Centre {
+	c := newCentring(e, mu, nil)
+	c.pull(mu, z, func() (float64, bool) {
+		if c.solve() != nil {
+			return 0, false
+		}
+		c.expect()
+		return c.rate(), c.keeps(c.lambda, c.truth)
+	})
+	return Centre{Point: c.point(), Spread: c.spread()}
 }
 
-func newCentring(e *Engine, held []Held) *centring {
-	c := &centring{
-		engine: e,
-		fitter: e.Fitter(),
-		x:      e.nominal(),
-		lambda: make([]float64, e.bins),
-		m:      make([]float64, len(e.taus)),
-		moves:  make([]response, e.bins),
-		truth:  e.Point(0, nil).Lambda,
+// keeps tells whether every bin keeps a part of what is expected.
+func (c *centring) keeps(lambda, expected []float64) bool {
+	const part = 0.05
+	for i, l := range lambda {
+		if !(l >= part*expected[i]) {
+			return false
+		}
 	}
+	return true
+}
+
+// pull takes c.x to the strength below mu at which twice the rate is z², or to the
+// last at which the data exist.
+func (c *centring) pull(mu, z float64, rate func() (rate float64, ok bool)) {
+	good := slices.Clone(c.x)
+	// below tells whether the data at a strength exist and are less than z down.
+	below := func(down float64) bool {
+		copy(c.x, good)
+		c.x[0] = mu - down
+		r, ok := rate()
+		if !ok || !(2*r < z*z) {
+			return false
+		}
+		copy(good, c.x)
+		return true
+	}
+	low, high := 0.0, 1.0
+	for below(high) && high < 1e12 {
+		low, high = high, 2*high
+	}
+	for range 40 {
+		if middle := (low + high) / 2; below(middle) {
+			low = middle
+		} else {
+			high = middle
+		}
+	}
+	copy(c.x, good)
+	c.x[0] = mu - low
+	rate() // sets the data
+}
+
+// centring is the state of one search for a Centre.
+type centring struct {
+	engine    *Engine
+	fitter    *Fitter
+	variables []int       // that the score equations are solved for
+	x         []float64   // variables, background parameters solved for
+	lambda    []float64   // of the data, by bin
+	m         []float64   // of the data, by simulation factor
+	moves     []response  // of lambda with what is expected, by bin
+	truth     []float64   // nominal
+	share     []float64   // of the background in truth, by bin
+	slopes    [][]float64 // ∂λ0/∂p of the truth, by background parameter
+	floor     []float64   // lowest value of each background parameter
+}
+
+func newCentring(e *Engine, mu float64, held []Held) *centring {
+	variables := e.background
+	if mu > 0 {
+		variables = e.all
+	}
+	c := &centring{
+		engine:    e,
+		fitter:    e.Fitter(),
+		variables: variables,
+		x:         e.nominal(),
+		lambda:    make([]float64, e.bins),
+		m:         make([]float64, len(e.taus)),
+		moves:     make([]response, e.bins),
+		truth:     e.Point(mu, nil).Lambda,
+		share:     e.Point(0, nil).Lambda,
+	}
+	for i, l := range c.truth {
+		if l > 0 {
+			c.share[i] /= l
+		}
+	}
+	c.x[0] = mu
 	for i := range c.moves {
 		c.moves[i] = response{1, 1}
 	}
@@ -117,7 +189,7 @@ func newCentring(e *Engine, held []Held) *centring {
 	for _, h := range held {
 		c.x[1+h.Param] = h.Value
 	}
-	for _, v := range e.background {
+	for _, v := range c.variables {
 		floor := e.params[v-1].Lower
 		if floor == 0 {
 			smallest := posInf
@@ -140,7 +212,7 @@ func newCentring(e *Engine, held []Held) *centring {
 type response struct{ signal, background float64 }
 
 // expect sets lambda and m to the data at c.x. A simulation factor follows from
-// its own score equation of the truth, n + m = b0 + τ, and stays where its
+// its own score equation of the truth, n·b0/λ0 + m = b0 + τ, and stays where its
 // background keeps fewestEvents.
 func (c *centring) expect() (clamped bool) {
 	for ci := range c.engine.channels {
@@ -153,14 +225,21 @@ func (c *centring) expect() (clamped bool) {
 			i := ch.first + bin
 			b := c.fitter.spaces[ci].background[bin]
 			s := c.lambda[i] - b
-			g := (c.truth[i] + at.tau - s) / (b + at.tau)
-			c.moves[i] = response{at.tau / (b + at.tau), g * at.tau / (b + at.tau)}
-			if floor := math.Min(1, fewestEvents/c.truth[i]); g < floor {
+			nominal := c.truth[i] * c.share[i]
+			total := c.share[i]*b + at.tau
+			g := (nominal + at.tau - c.share[i]*s) / total
+			c.moves[i] = response{at.tau / total, g * at.tau / total}
+			if floor := math.Min(1, fewestEvents/nominal); g < floor {
 				g, clamped = floor, true
 				c.moves[i] = response{1, g}
 			}
 			c.lambda[i] = s + g*b
 			c.m[at.index] = g * at.tau
+		}
+	}
+	for i, l := range c.truth {
+		if l == 0 {
+			c.lambda[i] = 0 // no data of the truth fall there
 		}
 	}
 	return clamped
@@ -169,12 +248,12 @@ func (c *centring) expect() (clamped bool) {
 // jacobian is ∂λ/∂p at c.x for each background parameter, over all bins.
 func (c *centring) jacobian() [][]float64 {
 	e, f := c.engine, c.fitter
-	out := make([][]float64, len(e.background))
+	out := make([][]float64, len(c.variables))
 	for k := range out {
 		out[k] = make([]float64, e.bins)
 	}
-	index := make(map[int]int, len(e.background))
-	for k, v := range e.background {
+	index := make(map[int]int, len(c.variables))
+	for k, v := range c.variables {
 		index[v] = k
 	}
 	for ci := range e.channels {
@@ -209,42 +288,49 @@ func (c *centring) q0(mu float64) (float64, error) {
 	if err := c.solve(); err != nil {
 		return math.NaN(), err
 	}
-	rate, clamped := 0.0, c.expect()
+	clamped := c.expect()
+	for k, v := range c.variables {
+		clamped = clamped || c.x[v] <= c.floor[k]
+	}
+	if !clamped {
+		return 2 * c.rate(), nil
+	}
+	fit := c.fitter.AtFresh(c.point().Asimov(), 0)
+	return fit.Deviance, fit.Status.Err()
+}
+
+// rate is the large-deviation rate of the data of the last expect.
+func (c *centring) rate() float64 {
+	rate := 0.0
 	for i, l := range c.lambda {
 		if l > 0 {
 			rate += deviance(l, c.truth[i])
-		}
-		if l == 0 {
+		} else {
 			rate += c.truth[i]
 		}
 	}
 	for k, tau := range c.engine.taus {
 		rate += deviance(c.m[k], tau)
 	}
-	for k, v := range c.engine.background {
+	for _, v := range c.variables {
 		if c.engine.params[v-1].Constrained {
 			rate += c.x[v] * c.x[v] / 2
 		}
-		clamped = clamped || c.x[v] <= c.floor[k]
 	}
-	if !clamped {
-		return 2 * rate, nil
-	}
-	fit := c.fitter.AtFresh(c.point().Asimov(), 0)
-	return fit.Deviance, fit.Status.Err()
+	return rate
 }
 
 // solve is Newton's method on the score equations, with the parameters at
 // their floor left out.
 func (c *centring) solve() error {
 	e := c.engine
-	n := len(e.background)
+	n := len(c.variables)
 	residual := make([]float64, n)
 	for range 100 {
 		c.expect()
 		jacobian := c.jacobian()
 		var solved []int
-		for j, v := range e.background {
+		for j, v := range c.variables {
 			residual[j] = 0
 			for i, l := range c.lambda {
 				if c.truth[i] > 0 {
@@ -273,7 +359,7 @@ func (c *centring) solve() error {
 						sum += jacobian[k][i] * c.slopes[j][i] / c.truth[i]
 					}
 				}
-				if j == k && e.params[e.background[j]-1].Constrained {
+				if j == k && e.params[c.variables[j]-1].Constrained {
 					sum++
 				}
 				a.Set(r, s, sum)
@@ -285,7 +371,7 @@ func (c *centring) solve() error {
 		}
 		moved := 0.0
 		for r, j := range solved {
-			moved = math.Max(moved, c.advance(c.x, e.background[j], step.AtVec(r), c.floor[j]))
+			moved = math.Max(moved, c.advance(c.x, c.variables[j], step.AtVec(r), c.floor[j]))
 		}
 		if moved < 1e-11 {
 			return nil
@@ -310,7 +396,7 @@ func (c *centring) advance(x []float64, v int, step, floor float64) float64 {
 func (c *centring) point() Point {
 	p := Point{Lambda: slices.Clone(c.lambda), A: make([]float64, len(c.engine.aux)), M: slices.Clone(c.m)}
 	for k, j := range c.engine.aux {
-		if c.engine.movesBackground[j] {
+		if slices.Contains(c.variables, 1+j) {
 			p.A[k] = c.x[1+j]
 		}
 	}

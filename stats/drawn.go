@@ -45,7 +45,7 @@ func (e *Engine) Taus() []float64 { return e.taus }
 // DrawnCentre is where toys of a tail are thrown from when nuisance parameters
 // are drawn anew for every toy and auxiliary measurements stay at nominal.
 type DrawnCentre struct {
-	Mu    float64   // that the data look like
+	Mu    float64   // that the data look like, or that they are thrown with
 	Theta []float64 // centres of the constrained parameters, in the order of Data.A
 	Gamma []float64 // centres of the simulation factors
 	Tilt  []float64 // by bin: factor on what is expected without signal
@@ -60,12 +60,27 @@ type DrawnCentre struct {
 // those of their background-only fit. φ is such that this fit has the free
 // parameters of the truth.
 func (e *Engine) DrawnCentre(z float64, held ...Held) (DrawnCentre, error) {
-	c := drawnCentring{centring: newCentring(e, held), null: e.nominal()}
+	c := drawnCentring{centring: newCentring(e, 0, held), null: e.nominal()}
 	mu, err := toRoot(z, c.q0)
 	if err != nil {
 		return DrawnCentre{}, fmt.Errorf("most probable background-only data at %v standard deviations: %w", z, err)
 	}
 	return c.centre(mu), nil
+}
+
+// DrawnDeficit is Deficit where parameters are drawn.
+func (e *Engine) DrawnDeficit(mu, z float64) DrawnCentre {
+	c := drawnCentring{centring: newCentring(e, mu, nil), null: e.nominal()}
+	c.null[0] = mu
+	c.pull(mu, z, func() (float64, bool) {
+		if c.solve() != nil {
+			return 0, false
+		}
+		d := c.data()
+		fit := c.fitter.AtFresh(d, mu)
+		return fit.Deviance / 2, fit.Status == Converged && c.keeps(d.N, c.truth)
+	})
+	return c.centre(mu)
 }
 
 type drawnCentring struct {
@@ -94,8 +109,8 @@ func (c *drawnCentring) q0(mu float64) (float64, error) {
 // residuals are the score equations of the background-only fit, by background
 // parameter.
 func (c *drawnCentring) residuals(dst []float64) {
-	c.fitter.derivatives(c.null, c.data(), true, false)
-	for j, v := range c.engine.background {
+	c.fitter.derivatives(c.null, c.data(), c.null[0] == 0, false)
+	for j, v := range c.variables {
 		dst[j] = c.fitter.gradient[v]
 	}
 }
@@ -105,12 +120,12 @@ func (c *drawnCentring) residuals(dst []float64) {
 func (c *drawnCentring) solve() error {
 	const h = 1e-6 // of a parameter's step, for what free parameters do
 	e := c.engine
-	n := len(e.background)
+	n := len(c.variables)
 	at, up, down := make([]float64, n), make([]float64, n), make([]float64, n)
 	for range mostSteps {
 		c.residuals(at)
 		var solved []int
-		for j, v := range e.background {
+		for j, v := range c.variables {
 			// A floor is left only where the data have too few events.
 			if e.params[v-1].Constrained || c.x[v] > c.floor[j] || at[j] > 0 {
 				solved = append(solved, j)
@@ -125,11 +140,11 @@ func (c *drawnCentring) solve() error {
 		for r, j := range solved {
 			b.SetVec(r, -at[j])
 			for s, k := range solved {
-				a.Set(r, s, c.fitter.hessian[e.background[j]*size+e.background[k]])
+				a.Set(r, s, c.fitter.hessian[c.variables[j]*size+c.variables[k]])
 			}
 		}
 		for s, k := range solved {
-			v := e.background[k]
+			v := c.variables[k]
 			if e.params[v-1].Constrained {
 				continue
 			}
@@ -149,7 +164,7 @@ func (c *drawnCentring) solve() error {
 		}
 		moved := 0.0
 		for r, j := range solved {
-			v := e.background[j]
+			v := c.variables[j]
 			of, floor := c.x, c.floor[j]
 			if e.params[v-1].Constrained {
 				of, floor = c.null, negInf
@@ -180,13 +195,15 @@ func (c *drawnCentring) centre(mu float64) DrawnCentre {
 	expected := make([]float64, e.bins)
 	for ci := range e.channels {
 		ch := &e.channels[ci]
-		c.fitter.expect(ci, c.null, expected, true)
+		c.fitter.expect(ci, c.null, expected, c.null[0] == 0)
 		for bin, at := range ch.simulated {
 			if at.tau > 0 {
 				i := ch.first + bin
-				g := factor(d.N[i], at.tau, 0, expected[i], at.tau)
+				b := c.fitter.spaces[ci].background[bin]
+				s := expected[i] - b
+				g := factor(d.N[i], at.tau, s, b, at.tau)
 				out.Gamma[at.index] = g
-				expected[i] *= g
+				expected[i] = s + g*b
 			}
 		}
 	}

@@ -233,8 +233,14 @@ func compile(c Channel, first int) channel {
 		}
 		out.processes = append(out.processes, q)
 	}
+	// Rounding and the far tail of a peak are no place to look for one event.
+	const negligible = 1e-6 // of the channel's signal
+	total := 0.0
+	for _, s := range out.signalBins {
+		total += s
+	}
 	for bin, s := range out.signalBins {
-		if background[bin] == 0 {
+		if background[bin] == 0 && s > negligible*total {
 			out.bareBins[bin] = s
 		}
 	}
@@ -283,7 +289,8 @@ func (e *Engine) nominal() []float64 {
 }
 
 // Bare is the expected signal, at μ = 1 and nominal parameters, in bins where
-// no background can fall: there one event decides.
+// no background can fall: there one event decides. Bins with less than a
+// millionth of their channel's signal are not looked at.
 func (e *Engine) Bare() float64 {
 	sum := 0.0
 	for _, c := range e.channels {

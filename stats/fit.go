@@ -151,3 +151,4 @@ func (f *Fitter) AtFresh(d *Data, mu float64) Fit {
 	f.start(d, mu)
 	return f.At(d, mu)
 }
+

@@ -51,6 +51,8 @@ func cautions(r *ReachResult, engines []*stats.Engine, p plateaus) []string {
 		out.say("Where a significance lies beyond the tail that the toys are trusted with, only a lower bound is given.")
 	}
 	out.simulation(engines)
+	out.floating(engines)
+	out.indistinct(r)
 	out.failures(failed, thrown)
 	for _, c := range r.Checks {
 		if math.Abs(c.Pull) > suspicious {
@@ -84,6 +86,7 @@ func bandsCautions(r *BandsResult, engines []*stats.Engine) []string {
 	out.fewEvents(smallest, at)
 	out.impossibleLimits(r.Config, formulas, engines)
 	out.simulation(engines)
+	out.floating(engines)
 	out.failures(failed, thrown)
 	out.always(r.Config)
 	return out
@@ -101,14 +104,7 @@ func (l *list) fewEvents(smallest, luminosity float64) {
 func (l *list) impossibleLimits(c Config, formulas []Exclusion, engines []*stats.Engine) {
 	least := -math.Log(1 - c.Confidence)
 	for i, x := range formulas {
-		events := 0.0
-		for _, n := range engines[i].Point(1, nil).Lambda {
-			events += n
-		}
-		for _, n := range engines[i].Point(0, nil).Lambda {
-			events -= n
-		}
-		if x.MuUp.Minus2*events < least {
+		if x.MuUp.Minus2*signalEvents(engines[i]) < least {
 			l.say("Some limits of the formulas lie below %.4g signal events: without systematic uncertainties no true %v %% CLs limit can.", least, 100*c.Confidence)
 			return
 		}
@@ -120,6 +116,38 @@ func (l *list) simulation(engines []*stats.Engine) {
 	if engines[0].Factors() > 0 {
 		l.say("The statistical errors of simulated templates do not shrink with luminosity, only with more simulated events.")
 	}
+}
+
+// floating tells of parameters that exist only under the signal hypothesis.
+func (l *list) floating(engines []*stats.Engine) {
+	const matters = 0.1 // shape widths that a standard deviation moves
+	for _, p := range engines[0].Floating() {
+		if p.Strength >= matters {
+			l.say("The position or width of a signal is uncertain: without signal nothing holds it, and the formulas understate p-values (Davies 1987).")
+			return
+		}
+	}
+}
+
+// indistinct tells of a signal that looks like a background that floats.
+func (l *list) indistinct(r *ReachResult) {
+	const nothing = 1e-4 // standard deviations
+	for _, p := range r.Points {
+		if !(p.Formula.Discovery.Z.Median < nothing) {
+			return
+		}
+	}
+	l.say("The data cannot tell the signal from a background whose rate is free: give that background a control region, a constraint or another shape.")
+}
+
+// signalEvents are expected at μ = 1 in all channels.
+func signalEvents(e *stats.Engine) float64 {
+	signal, background := e.Point(1, nil).Lambda, e.Point(0, nil).Lambda
+	events := 0.0
+	for bin, n := range signal {
+		events += n - background[bin]
+	}
+	return events
 }
 
 func (l *list) failures(failed, thrown int) {

@@ -1,8 +1,6 @@
 package toys
 
 import (
-	"errors"
-	"fmt"
 	"math"
 	"sort"
 
@@ -81,10 +79,18 @@ func (r *runner) tailProposals(e *stats.Engine, wanted span, toys, finer int) ([
 			failures[k+1] = out[k+1].centre(e, r.config.Nuisances, p.z, p.held)
 		}
 	})
-	if err := errors.Join(append(failures, err)...); err != nil {
-		return nil, fmt.Errorf("toys for a tail: %w", err)
+	if err != nil {
+		return nil, err
 	}
-	return out, nil
+	// Data that are not found get no toys; how far the rest reach is judged by
+	// their weights.
+	kept := out[:1]
+	for k, p := range out[1:] {
+		if failures[k+1] == nil {
+			kept = append(kept, p)
+		}
+	}
+	return kept, nil
 }
 
 // centre puts a proposal at the most probable background-only data of q0 = z².

@@ -22,6 +22,11 @@ var lattice = math.Pow(1.4, 0.5)
 
 const goalSteps = 2
 
+const (
+	farthestRoot = 3   // ratio to the formula's root at which a correction is no correction
+	vague        = 0.5 // relative error of a luminosity that is not worth printing
+)
+
 // aim is a goal as a root: formula(L) = target for each fraction.
 type aim struct {
 	formula func(*stats.Engine) (float64, error)
@@ -170,11 +175,16 @@ func (r *runner) exclusionAim() aim {
 // correct fits the difference of toys and formula near the formula's root with
 // a line in ln L and solves for the luminosity, with the error of the replicas.
 func correct(search stats.Search, a aim, k int, root float64, measured []measurement, formula []float64) (luminosity, err float64, why string) {
-	var x, d, sigma []float64
+	var x, d, sigma, steps []float64
 	var used []int
+	stuck := false // every resampled set has the same discrete outcome
 	for i, m := range measured {
 		ratio := math.Log(m.luminosity / root)
-		if math.Abs(ratio) > (goalSteps+0.6)*math.Log(lattice) || math.IsNaN(m.value[k]) || math.IsInf(m.value[k], 0) {
+		if math.Abs(ratio) > (goalSteps+0.6)*math.Log(lattice) || math.IsNaN(m.value[k]) {
+			continue
+		}
+		if math.IsInf(m.value[k], 0) { // all experiments or none
+			stuck = true
 			continue
 		}
 		var finite []float64
@@ -185,15 +195,25 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 		}
 		s := deviation(finite)
 		if len(finite) < replicas*9/10 || !(s > 0) {
+			stuck = stuck || s == 0
 			continue
 		}
 		x = append(x, ratio)
 		d = append(d, m.value[k]-formula[i]-a.offset[k])
 		sigma = append(sigma, s)
+		steps = append(steps, m.step[k])
 		used = append(used, i)
+	}
+	const stepwise = "the toys' answer moves in steps with luminosity: there is no single luminosity for this goal"
+	if len(x) < 3 && stuck {
+		return math.NaN(), math.NaN(), stepwise
 	}
 	if len(x) < 3 {
 		return math.NaN(), math.NaN(), "too few luminosities near the formula's answer at which the toys give a number"
+	}
+	slices.Sort(steps)
+	if slices.Sort(sigma); steps[len(steps)/2] > 2*sigma[len(sigma)/2] {
+		return math.NaN(), math.NaN(), stepwise
 	}
 	even(sigma)
 	intercept, slope := line(x, d, sigma)
@@ -204,7 +224,7 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 	}
 	// Refused at 1 in 1000: nine lines are fitted in one run.
 	if p := mathext.GammaIncRegComp(float64(len(x)-2)/2, chi2/2); p < 1e-3 {
-		return math.NaN(), math.NaN(), "the toys' answer moves in steps with luminosity: there is no single luminosity for this goal"
+		return math.NaN(), math.NaN(), stepwise
 	}
 
 	l, solved := search.Luminosity(func(e *stats.Engine) (float64, error) {
@@ -213,9 +233,9 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 			return math.NaN(), err
 		}
 		return f + a.offset[k] + intercept - a.target[k], nil
-	}, root/2, 2*root)
+	}, root/farthestRoot, farthestRoot*root)
 	if solved != nil {
-		return math.NaN(), math.NaN(), fmt.Sprintf("the toys differ too much from the formula: %v", solved)
+		return math.NaN(), math.NaN(), fmt.Sprintf("the toys' answer lies more than a factor %v from the formula's, %.4g", farthestRoot, root)
 	}
 	// One step more: the correction at the root found, not at the formula's.
 	rate, failure := steepness(search, a, l)
@@ -245,7 +265,11 @@ func correct(search stats.Search, a aim, k int, root float64, measured []measure
 		i2, s2 := line(x, again, sigma)
 		moved = append(moved, (i2+s2*at)/(rate+slope))
 	}
-	return l, l * (deviation(moved) + bound), ""
+	err = l * (deviation(moved) + bound)
+	if !(err < vague*l) {
+		return math.NaN(), math.NaN(), fmt.Sprintf("the toys know the luminosity to no better than %.0f %%", 100*err/l)
+	}
+	return l, err, ""
 }
 
 // steepness is the growth of the formula's value with ln L.

@@ -14,8 +14,8 @@ var quantiles = [5]float64{stats.Phi(-2), stats.Phi(-1), 0.5, stats.Phi(1), stat
 // conventions are the significances called evidence and discovery.
 var conventions = [2]float64{3, 5}
 
-// oneSigma is the confidence of a standard error.
-var oneSigma = 1 - 2*stats.PValue(1)
+// oneSigma and twoSigma are the confidences of one and two standard errors.
+var oneSigma, twoSigma = 1 - 2*stats.PValue(1), 1 - 2*stats.PValue(2)
 
 // throw throws toys of proposals and takes their q0, with their weights under
 // the first of them, in the order of blocks and proposals.
@@ -150,13 +150,13 @@ func summarise(signal *ranked, null *tail) Discovery {
 		none.Toys, none.NullToys, none.FailedFits = d.Toys, d.NullToys, d.FailedFits
 		return none
 	}
-	why := fmt.Sprintf("%d background-only toys are trusted to %.2g standard deviations", null.total, d.Tail.ReachesZ)
+	why := fmt.Sprintf("too few of %d background-only toys share the tail: more are needed", null.total)
 	var z, zError, atLeast [5]float64
 	for i, u := range quantiles {
 		value, err, ok := null.z(signal.quantile(u))
 		z[i], atLeast[i] = value, math.NaN()
 		if !ok {
-			zError[i], atLeast[i] = math.NaN(), d.Tail.ReachesZ
+			zError[i], atLeast[i] = math.NaN(), null.atLeast(signal.quantile(u))
 			d.Why = why
 			continue
 		}
@@ -177,28 +177,46 @@ func summarise(signal *ranked, null *tail) Discovery {
 // significance where the null does not reach.
 func quantileError(signal *ranked, u float64, null *tail) float64 {
 	n := len(signal.toys)
-	low, high := stats.QuantileInterval(n, u, oneSigma)
-	low, high = max(0, low-signal.failed), min(n-1, high+signal.failed)
-	qLow, qHigh := signal.toys[low].q, signal.toys[high].q
-	zLow, _, okLow := null.z(qLow)
-	zHigh, _, okHigh := null.z(qHigh)
-	if !okLow || !okHigh {
-		zLow, zHigh = math.Sqrt(qLow), math.Sqrt(qHigh)
+	half := func(confidence float64) float64 {
+		low, high := stats.QuantileInterval(n, u, confidence)
+		low, high = max(0, low-signal.failed), min(n-1, high+signal.failed)
+		qLow, qHigh := signal.toys[low].q, signal.toys[high].q
+		zLow, _, okLow := null.z(qLow)
+		zHigh, _, okHigh := null.z(qHigh)
+		if !okLow || !okHigh {
+			zLow, zHigh = math.Sqrt(qLow), math.Sqrt(qHigh)
+		}
+		return (zHigh - zLow) / 2
 	}
-	return (zHigh - zLow) / 2
+	one, two := half(oneSigma), half(twoSigma)
+	// Where the quantile lies near the edge of a discrete outcome, one standard
+	// error sees nothing of the next and two do.
+	if two > 3*one {
+		return two
+	}
+	return one
 }
 
 // chance is the probability of a significance of at least z, with the errors of
 // both samples.
 func chance(signal *ranked, null *tail, z float64) (p, err float64) {
 	probability := stats.PValue(z)
-	threshold, ok := null.threshold(probability)
-	if !ok {
-		return math.NaN(), math.NaN()
-	}
 	n := len(signal.toys)
 	above := func(threshold float64) int {
 		return n - sort.Search(n, func(i int) bool { return signal.toys[i].q > threshold+tie })
+	}
+	threshold, ok := null.threshold(probability)
+	if !ok {
+		// The threshold lies between two that are sure. Where few toys do as well,
+		// it need not be known better.
+		const between = 0.01
+		lower, upper := null.around(probability)
+		few, most := above(upper), above(lower)
+		low, high := stats.BinomialInterval(few, n, oneSigma)
+		if float64(most-few) > between*float64(n) {
+			return math.NaN(), math.NaN()
+		}
+		return float64(few+most) / float64(2*n), (high-low+float64(most-few)/float64(n))/2 + float64(signal.failed)/float64(n)
 	}
 	k := above(threshold)
 	low, high := stats.BinomialInterval(k, n, oneSigma)

@@ -30,22 +30,6 @@ func (r *runner) at(e *stats.Engine, mu float64, toys int) proposal {
 	return p
 }
 
-// pulledTo is a proposal whose counts are expected at a point.
-func (r *runner) pulledTo(e *stats.Engine, point stats.Point, toys int) proposal {
-	p := proposal{Point: point, toys: toys}
-	if r.config.Nuisances == Drawn {
-		p.drawn = nominal(e)
-		p.drawn.tilt = make([]float64, e.Bins())
-		for bin, l := range e.Point(0, nil).Lambda {
-			p.drawn.tilt[bin] = 1
-			if l > 0 {
-				p.drawn.tilt[bin] = point.Lambda[bin] / l
-			}
-		}
-	}
-	return p
-}
-
 func nominal(e *stats.Engine) *parameters {
 	p := &parameters{theta: make([]float64, e.Auxiliary()), gamma: make([]float64, e.Factors())}
 	for i := range p.gamma {

@@ -24,10 +24,12 @@ func formulaGoals(search stats.Search, c Config) ([]Goal, plateaus, error) {
 	}
 	medianZ := func(e *stats.Engine) (float64, error) { return e.MedianZ(c.Mu) }
 	limit := func(e *stats.Engine) (float64, error) { return e.ExpectedLimit(0, c.Confidence) }
+	// A plateau that cannot be computed, far beyond every luminosity asked for,
+	// is not told of.
 	var p plateaus
 	var err error
-	if p.z, err = search.Plateau(medianZ, last); err != nil && !errors.Is(err, stats.ErrOneEvent) {
-		return nil, p, err
+	if p.z, err = search.Plateau(medianZ, last); err != nil {
+		p.z = math.NaN()
 	}
 	if p.mu, err = search.Plateau(limit, last); err != nil {
 		p.mu = math.NaN()
@@ -70,7 +72,7 @@ func formulaGoals(search stats.Search, c Config) ([]Goal, plateaus, error) {
 			case g.Name == "exclusion" && p.mu > 1:
 				why[k] = fmt.Sprintf("not reached: systematic uncertainties keep the median limit above μ = %.3g", p.mu)
 				plateau = p.mu
-			case g.Name != "exclusion" && p.z < g.Z:
+			case g.Name != "exclusion" && p.z < g.Z+n:
 				why[k] = fmt.Sprintf("not reached: systematic uncertainties keep the median Z below %.3g", p.z)
 				plateau = p.z
 			}

@@ -14,8 +14,8 @@ type limitToy struct {
 }
 
 // jointSample holds toys thrown in equal shares from background only, from
-// every node's μ and from a deficit of events, each of them weighted to every
-// one of the hypotheses.
+// every node's μ and from deficits of events, each of them weighted to every one
+// of the hypotheses.
 type jointSample struct {
 	nodes  []float64 // signal strengths, rising
 	blocks [][]limitToy
@@ -33,7 +33,7 @@ func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes [
 	for _, mu := range nodes {
 		proposals = append(proposals, r.at(e, mu, each))
 	}
-	proposals = append(proposals, r.pulledTo(e, deficit(e, nodes[len(nodes)/2]), each))
+	proposals = append(proposals, r.deficits(e, nodes, each)...)
 	m, err := r.newMixture(proposals)
 	if err != nil {
 		return nil, err
@@ -125,40 +125,22 @@ func (s *jointSample) once() []float64 {
 	return m
 }
 
-// deficit is the background pulled down along the direction in which a signal
-// of strength mu would push it up: λ0·(λ0/λ_μ)^κ. κ is where sqrt(q̃_μ) lies two
-// above its value for the background's own Asimov data, so that the toys of the
-// strongest limits are not rare.
-func deficit(e *stats.Engine, mu float64) stats.Point {
-	background := e.Point(0, nil)
-	signal := e.Point(mu, nil)
-	f := e.Fitter()
-	at := func(kappa float64) (stats.Point, float64) {
-		p := stats.Point{Lambda: make([]float64, len(background.Lambda)), A: make([]float64, len(background.A)), M: background.M}
-		for bin, l := range background.Lambda {
-			if l > 0 {
-				p.Lambda[bin] = l * math.Pow(l/signal.Lambda[bin], kappa)
-			}
+// deficits are the most probable data, of background only and of the lowest
+// nodes' strengths, that set limits as strong as the lower half of the band does.
+// CLs = α at the u-quantile is a tail of αu under the node's strength: without
+// toys from there it would hang on a few.
+func (r *runner) deficits(e *stats.Engine, nodes []float64, toys int) []proposal {
+	at := func(mu, z float64) proposal {
+		if r.config.Nuisances == Drawn {
+			c := e.DrawnDeficit(mu, z)
+			return proposal{drawn: &parameters{mu: mu, theta: c.Theta, gamma: c.Gamma, tilt: c.Tilt}, near: mu, toys: toys}
 		}
-		d := p.Asimov()
-		free := f.Free(d, 0, math.Inf(1))
-		q, status := f.QTilde(d, mu, free)
-		if status != stats.Converged {
-			return p, math.NaN()
-		}
-		return p, math.Sqrt(q)
+		c := e.Deficit(mu, z)
+		return proposal{Point: c.Point, spread: c.Spread, toys: toys}
 	}
-	point, z := at(0)
-	goal := z + 2
-	for kappa := 0.25; kappa <= 8; kappa *= 1.25 {
-		next, z := at(kappa)
-		if math.IsNaN(z) {
-			break
-		}
-		point = next
-		if z >= goal {
-			break
-		}
+	out := []proposal{at(0, 2.5)}
+	for k, mu := range nodes[:min(3, len(nodes))] {
+		out = append(out, at(mu, stats.Significance((1-r.config.Confidence)*quantiles[k])))
 	}
-	return point
+	return out
 }

@@ -17,7 +17,7 @@ import (
 func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Exclusion, error) {
 	share := max(r.config.Toys/5, fewestBlocks)
 	alpha := 1 - r.config.Confidence
-	start := pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))
+	start := r.pilotNodes(e, formula)
 	pilot, err := r.joint(e, luminosity, pilotLimitToys, start, max(share/4, fewestBlocks))
 	if err != nil {
 		return Exclusion{}, err
@@ -40,8 +40,9 @@ func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Excl
 			x.Toys, x.FailedFits = thrown, failed
 			return x, nil
 		}
-		// A few pilot toys can put a node too far off: take the formulas' as well.
-		nodes = spread(append(nodes, start...))
+		// A few pilot toys can put a node too far off: take the formulas', and what
+		// these toys say, as well.
+		nodes = spread(append(mainNodes(main.roots(alpha, main.outcomes(main.once(), 0)), start), append(nodes, start...)...))
 	}
 }
 
@@ -49,25 +50,23 @@ func (r *runner) limits(e *stats.Engine, luminosity float64, formula Band) (Excl
 // it can be told before the pilot's limits are known.
 func (r *runner) plannedLimits(e *stats.Engine, formula Band) int64 {
 	share := max(r.config.Toys/5, fewestBlocks)
-	proposals := len(pilotNodes(formula, e.Point(1, nil), e.Point(0, nil))) + 2
+	proposals := len(r.pilotNodes(e, formula)) + 5
 	return int64(proposals * (share + max(share/4, fewestBlocks)))
 }
 
-// pilotNodes are the limits of the formulas, but none below 2.9 expected signal
-// events, where no limit can be.
-func pilotNodes(formula Band, signal, background stats.Point) []float64 {
-	events := 0.0
-	for bin, l := range signal.Lambda {
-		events += l - background.Lambda[bin]
-	}
+// pilotNodes are the limits of the formulas, but none below the -ln α signal
+// events, nearly, that an experiment which sees nothing excludes.
+func (r *runner) pilotNodes(e *stats.Engine, formula Band) []float64 {
+	least := -math.Log(1 - r.config.Confidence)
+	events := signalEvents(e)
 	var nodes []float64
 	for _, mu := range []float64{formula.Minus2, formula.Minus1, formula.Median, formula.Plus1, formula.Plus2} {
 		if !math.IsNaN(mu) {
-			nodes = append(nodes, math.Max(mu, 2.9/events))
+			nodes = append(nodes, math.Max(mu, 0.97*least/events))
 		}
 	}
 	if len(nodes) == 0 {
-		nodes = append(nodes, 3/events)
+		nodes = append(nodes, least/events)
 	}
 	return spread(nodes)
 }
@@ -280,10 +279,10 @@ const replicas = 200
 
 // atom is the probability from which tied experiments count as one discrete
 // outcome, and rare how often a resampled set may take another one before the
-// quantile counts as lying on its edge: two standard errors, one-sided.
+// quantile counts as lying on its edge: 2.6 standard errors, one-sided.
 const (
-	atom = 0.01
-	rare = 0.023
+	atom = 0.003
+	rare = 0.005
 )
 
 // solve gives the limits of a sample with their errors, by a bootstrap over
@@ -293,6 +292,7 @@ const (
 func (r *runner) solve(s *jointSample, luminosity, alpha float64) (Exclusion, error) {
 	best := s.outcomes(s.once(), 0)
 	mu := s.roots(alpha, best)
+	trusted := s.trusted(mu, best)
 	most, least := mu, mu
 	if s.failures() > 0 {
 		most = s.roots(alpha, s.outcomes(s.once(), 1))
@@ -332,6 +332,10 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) (Exclusion, er
 			errs[i] = math.NaN()
 			x.Why = "CLs does not reach the confidence level at the signal strengths tried"
 			continue
+		case !trusted[i]:
+			mu[i], errs[i] = math.NaN(), math.NaN()
+			x.Why = "a few toys carry a tail of the limit: more are needed"
+			continue
 		case math.IsNaN(most[i]) || math.IsNaN(least[i]):
 			mu[i], errs[i] = math.NaN(), math.NaN()
 			x.Why = "so many fits failed that they leave the limit open"
@@ -341,14 +345,50 @@ func (r *runner) solve(s *jointSample, luminosity, alpha float64) (Exclusion, er
 			x.Why = fmt.Sprintf("too few toys: %d of %d resampled sets give no limit", missing, replicas)
 			continue
 		}
+		errs[i] = deviation(same)
 		if float64(len(different)) > rare*replicas {
 			slices.Sort(different)
-			others[i] = different[len(different)/2]
+			other := different[len(different)/2]
+			// Steps within the error are part of it.
+			if math.Abs(other-mu[i]) > 3*errs[i] {
+				others[i] = other
+			} else {
+				errs[i] = deviation(append(same, different...))
+			}
 		}
-		errs[i] = deviation(same) + math.Abs(most[i]-least[i])/2
+		errs[i] += math.Abs(most[i]-least[i]) / 2
 	}
 	x.MuUp, x.MuUpError, x.MuUpOther = band(mu), band(errs), band(others)
 	return x, nil
+}
+
+// trusted tells which limits rest on enough toys: those in both tails of CLs at
+// the node nearest to each.
+func (s *jointSample) trusted(mu [5]float64, best [][5]outcome) (ok [5]bool) {
+	const largest = 0.1 // share of one toy
+	for i := range mu {
+		if math.IsNaN(mu[i]) {
+			continue
+		}
+		k := nearest(s.nodes, mu[i])
+		var sum, squares, heaviest [2]float64
+		for _, p := range s.order[k] {
+			toy := s.at(p)
+			if toy.q[k] < best[k][i].q-tie {
+				break
+			}
+			for h, w := range [2]float64{toy.weight[0], toy.weight[1+k]} {
+				sum[h] += w
+				squares[h] += w * w
+				heaviest[h] = math.Max(heaviest[h], w)
+			}
+		}
+		ok[i] = true
+		for h := range sum {
+			ok[i] = ok[i] && sum[h]*sum[h] >= 2*fewest*squares[h] && heaviest[h] <= largest*sum[h]
+		}
+	}
+	return ok
 }
 
 // nearest is the node nearest to mu in ratio.

@@ -2,6 +2,7 @@ package toys
 
 import (
 	"math"
+	"sort"
 
 	"lumireach/stats"
 )
@@ -13,6 +14,7 @@ type measurement struct {
 	luminosity float64
 	value      [3]float64
 	bound      [3]float64 // how far failed fits could move it
+	step       [3]float64 // to the next discrete outcome, 0 where outcomes lie close
 	replicas   [3][]float64
 	toys       int
 	failed     int
@@ -88,6 +90,7 @@ func (r *runner) measureDiscovery(e *stats.Engine, luminosity, goal float64, toy
 			low := null.p(signal.quantile(math.Max(0, u-lift))).p + null.failed/float64(null.total)
 			m.bound[k] = (stats.Significance(high) - stats.Significance(low)) / 2
 		}
+		m.step[k] = null.step(signal, u)
 		q[k] = make([]float64, replicas)
 	}
 	if err := r.resample(signalToys, luminosity, signal.blocks, func(b int, multiplicity []float64) {
@@ -114,36 +117,70 @@ func (r *runner) measureExclusion(e *stats.Engine, luminosity float64, toys int)
 		return m, err
 	}
 	alpha := 1 - r.config.Confidence
-	value := stats.PhiInverse(s.excluded(alpha, s.once(), 0))
+	value, step := s.excluded(alpha, s.once(), 0)
 	bound := 0.0
 	if m.failed = s.failures(); m.failed > 0 {
-		bound = math.Abs(stats.PhiInverse(s.excluded(alpha, s.once(), 1))-stats.PhiInverse(s.excluded(alpha, s.once(), -1))) / 2
+		high, _ := s.excluded(alpha, s.once(), 1)
+		low, _ := s.excluded(alpha, s.once(), -1)
+		bound = math.Abs(high-low) / 2
 	}
 	m.toys = s.size()
 	for k := range m.value {
-		m.value[k], m.bound[k] = value, bound
+		m.value[k], m.bound[k], m.step[k] = value, bound, step
 	}
 	return m, r.resample(exclusionToys, luminosity, len(s.blocks), func(b int, multiplicity []float64) {
-		v := stats.PhiInverse(s.excluded(alpha, multiplicity, 0))
+		v, _ := s.excluded(alpha, multiplicity, 0)
 		for k := range m.replicas {
 			m.replicas[k][b] = v
 		}
 	})
 }
 
-// excluded is the probability, without signal, of CLs <= alpha at the first
-// node. CLs rises as q̃ falls, but for the noise of the toys, which can carry it
-// across alpha more than once: the middle of those places is taken.
-func (s *jointSample) excluded(alpha float64, multiplicity []float64, fails int) float64 {
+// stepShare is the probability from which tied experiments make an answer move
+// in steps.
+const stepShare = 0.01
+
+// step is how far the significance of the next discrete outcome is from that of
+// the u-quantile of signal toys, on the nearer side; 0 where outcomes that tie are
+// rarer than stepShare.
+func (t *tail) step(signal *ranked, u float64) float64 {
+	q := signal.quantile(u)
+	n := len(signal.toys)
+	first := sort.Search(n, func(i int) bool { return signal.toys[i].q >= q-tie })
+	next := sort.Search(n, func(i int) bool { return signal.toys[i].q > q+tie })
+	if float64(next-first) < stepShare*float64(n) || first == 0 || next == n {
+		return 0
+	}
+	z := func(i int) float64 { return stats.Significance(math.Min(1, t.p(signal.toys[i].q).p)) }
+	return math.Min(z(next)-z(first), z(first)-z(first-1))
+}
+
+// excluded is the normal quantile of the probability, without signal, of CLs <=
+// alpha at the first node, and how far it would move by one more discrete outcome,
+// 0 where outcomes are rarer than stepShare. CLs rises as q̃ falls, but for the noise of
+// the toys, which can carry it across alpha more than once: the middle of those
+// places is taken.
+func (s *jointSample) excluded(alpha float64, multiplicity []float64, fails int) (quantile, step float64) {
 	w := s.walk(0, multiplicity, fails)
-	first, last, above := 0.0, 0.0, false
+	first, last, before, after, above := 0.0, 0.0, 0.0, math.NaN(), false
 	for w.next() {
+		here := w.sum0 / w.total0
 		if above = above || w.cls() > alpha; !above {
-			first = w.sum0 / w.total0
+			first = here
+		} else if math.IsNaN(after) {
+			after = here
 		}
 		if w.cls() <= alpha {
-			last = w.sum0 / w.total0
+			last = here
 		}
+		before = here
 	}
-	return (first + last) / 2
+	if math.IsNaN(after) {
+		after = before
+	}
+	quantile = stats.PhiInverse((first + last) / 2)
+	if after-first > stepShare {
+		step = stats.PhiInverse(after) - quantile
+	}
+	return quantile, step
 }

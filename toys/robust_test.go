@@ -8,6 +8,8 @@ import (
 	"strings"
 	"testing"
 
+	"gonum.org/v1/gonum/floats"
+
 	"lumireach/stats"
 )
 
@@ -181,8 +183,8 @@ func TestFailedFits(t *testing.T) {
 	if !(b.Discovery.ZError.Median > a.Discovery.ZError.Median) {
 		t.Errorf("error of the median Z is %v with failures, %v without: not wider", b.Discovery.ZError.Median, a.Discovery.ZError.Median)
 	}
-	if !(b.Exclusion.MuUpError.Median > a.Exclusion.MuUpError.Median) {
-		t.Errorf("error of the median limit is %v with failures, %v without: not wider", b.Exclusion.MuUpError.Median, a.Exclusion.MuUpError.Median)
+	if narrow, wide := a.Exclusion.MuUpError.list(), b.Exclusion.MuUpError.list(); !(floats.Sum(wide[:]) > floats.Sum(narrow[:])) {
+		t.Errorf("errors of the limits are %v with failures, %v without: not wider", b.Exclusion.MuUpError, a.Exclusion.MuUpError)
 	}
 	if text := strings.Join(bad.Cautions, "\n"); !strings.Contains(text, "Warning: more than 1 in 1000 fits failed") {
 		t.Errorf("no warning of failed fits: %s", text)
@@ -191,7 +193,8 @@ func TestFailedFits(t *testing.T) {
 		if g.Toys.FailedFits == 0 {
 			t.Errorf("goal %s counts no failed fit", g.Name)
 		}
-		if !(g.Toys.Error > good.Goals[k].Toys.Error) {
+		// Failures of 1 in 100 can leave a luminosity open altogether.
+		if !(g.Toys.Error > good.Goals[k].Toys.Error) && g.Toys.Why == "" {
 			t.Errorf("error of goal %s is %v with failures, %v without: not wider", g.Name, g.Toys.Error, good.Goals[k].Toys.Error)
 		}
 	}

@@ -220,22 +220,61 @@ func (t *tail) threshold(probability float64) (q float64, ok bool) {
 	return t.toys[n].q, n > 0 && t.trusts(t.first(n))
 }
 
-// reach describes how far the toys go: the largest significance whose tail
-// they are trusted with.
-func (t *tail) reach() *Tail {
-	// Trust fails once on the way out, give or take a toy: halve for the place.
-	low, high := 0, len(t.toys) // trusts high, as far as anything does
-	for high-low > 1 {
-		if middle := (low + high) / 2; t.trusts(t.first(middle)) {
-			high = middle
-		} else {
-			low = middle
+// around is values of q0 on either side of threshold: a tail that is surely more
+// than the probability given and one that is surely less. What is told by many
+// standard errors needs fewer toys than a number does.
+func (t *tail) around(probability float64) (lower, upper float64) {
+	const (
+		least = 5    // effective toys
+		most  = 0.35 // share of one toy
+		sure  = 5    // standard errors
+	)
+	holds := func(e estimate, sign float64) bool {
+		return e.effective >= least && e.share <= most && sign*(e.p-probability) >= sure*e.err
+	}
+	n := sort.Search(len(t.sums), func(i int) bool { return t.sums[i] > probability*float64(t.total) })
+	lower, upper = math.Inf(-1), math.Inf(1)
+	for more := n; more < len(t.toys); more = max(more+1, int(float64(more)/scanRatio)) {
+		if more > 0 && holds(t.first(more), 1) {
+			lower = t.toys[more-1].q
+			break
 		}
 	}
-	e := t.first(high)
-	r := &Tail{EffectiveToys: e.effective, LargestShare: e.share}
-	if t.trusts(e) {
+	for less := n - 1; less > 0; less = min(less-1, int(scanRatio*float64(less))) {
+		if holds(t.first(less), -1) {
+			upper = t.toys[less-1].q
+			break
+		}
+	}
+	return lower, upper
+}
+
+// scanRatio is the ratio of the numbers of toys in neighbouring tails where a
+// tail is scanned for trust.
+const scanRatio = 0.93
+
+// reach describes how far the toys go: the largest significance up to which
+// they are trusted with every tail.
+func (t *tail) reach() *Tail {
+	r := &Tail{}
+	for n := len(t.toys); n > 0; n = min(n-1, int(scanRatio*float64(n))) {
+		e := t.first(n)
+		if !t.trusts(e) {
+			break
+		}
+		r.EffectiveToys, r.LargestShare = e.effective, e.share
 		r.ReachesZ = math.Max(0, stats.Significance(math.Min(1, e.p)))
 	}
 	return r
+}
+
+// atLeast is a lower bound of the significance of q: that of the smallest trusted
+// tail that holds it.
+func (t *tail) atLeast(q float64) float64 {
+	for n := max(1, t.within(q)); n <= len(t.toys); n = max(n+1, int(float64(n)/scanRatio)) {
+		if e := t.first(n); t.trusts(e) {
+			return math.Max(0, stats.Significance(math.Min(1, e.p)))
+		}
+	}
+	return 0
 }

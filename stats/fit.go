@@ -152,3 +152,6 @@ func (f *Fitter) AtFresh(d *Data, mu float64) Fit {
 	return f.At(d, mu)
 }
 
+// Restart makes a fit of d that was made before the last one, so that At may
+// begin there.
+func (f *Fitter) Restart(d *Data, fit Fit) { f.start(d, fit.Mu) }

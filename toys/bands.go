@@ -30,6 +30,17 @@ func bands(r *runner, search stats.Search) (*BandsResult, error) {
 			r.progress.Total += r.plannedLimits(e, result.Points[i].Formula.MuUp)
 		}
 	}
+	if notEnumerable(engines[0], c.Nuisances) == "" {
+		err := r.share(len(engines), func() func(int) {
+			return func(i int) {
+				x := exactExclusion(engines[i], c.Confidence, result.Points[i].Formula.MuUp)
+				result.Points[i].Exact = &x
+			}
+		})
+		if err != nil {
+			return nil, err
+		}
+	}
 	if c.Toys > 0 {
 		for i := range result.Points {
 			p := &result.Points[i]

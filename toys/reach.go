@@ -78,6 +78,14 @@ func reach(r *runner, search stats.Search) (*ReachResult, error) {
 		return nil, err
 	}
 	result.Goals = goals
+	if notEnumerable(engines[0], c.Nuisances) == "" {
+		if err := r.exactPoints(engines, result.Points); err != nil {
+			return nil, err
+		}
+		if err := r.exactGoals(search, result.Goals); err != nil {
+			return nil, err
+		}
+	}
 
 	if c.Toys > 0 {
 		r.progress.Total = r.plannedGoals(result.Goals)
@@ -111,6 +119,17 @@ func reach(r *runner, search stats.Search) (*ReachResult, error) {
 	}
 	result.Cautions = cautions(result, engines, plateaus)
 	return result, nil
+}
+
+// exactPoints adds the exact answers, as far as the outcomes are few enough.
+func (r *runner) exactPoints(engines []*stats.Engine, points []Point) error {
+	r.stage("exact sums")
+	return r.share(len(points), func() func(int) {
+		return func(i int) {
+			a := exactly(engines[i], r.config, points[i].Formula)
+			points[i].Exact = &a
+		}
+	})
 }
 
 // formulas is the asymptotic answer at one luminosity.

@@ -55,12 +55,20 @@ type Answer struct {
 	Exclusion Exclusion
 }
 
+// ExactAnswer is what exact sums over all outcomes say at one luminosity.
+type ExactAnswer struct {
+	Answer
+	Coverage    float64 // probability that the limit is not below μ = 1 if that is true
+	CoverageWhy string  // for a Coverage that is NaN
+}
+
 // Point lays the engines side by side at one luminosity.
 type Point struct {
 	Luminosity    float64
 	Formula       Answer
-	Toys          *Answer // nil with Config.Toys = 0
-	SmallestCount float64 // smallest expected count of a bin in which signal falls, at μ, in events
+	Toys          *Answer      // nil with Config.Toys = 0
+	Exact         *ExactAnswer // nil where outcomes cannot be enumerated
+	SmallestCount float64      // smallest expected count of a bin in which signal falls, at μ, in events
 }
 
 // GoalAnswer is the luminosity that one engine gives for a goal, for half, 80 %
@@ -82,6 +90,7 @@ type Goal struct {
 	Confidence float64 // of exclusion, else 0
 	Formula    GoalAnswer
 	Toys       *GoalAnswer // nil with Config.Toys = 0
+	Exact      *ExactGoal  // nil where outcomes cannot be enumerated
 }
 
 // Check compares weighted with plain toys of the null: those of all tails that
@@ -110,6 +119,7 @@ type BandsPoint struct {
 	Luminosity float64
 	Formula    Exclusion
 	Toys       *Exclusion // nil with Config.Toys = 0
+	Exact      *Exclusion // nil where outcomes cannot be enumerated
 }
 
 // BandsResult is the expected-limit bands on μ against luminosity.

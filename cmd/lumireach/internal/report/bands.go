@@ -35,6 +35,14 @@ func BandsTable(w io.Writer, h Header, r *toys.BandsResult) error {
 			}
 			g.add(row...)
 		}
+		if x := p.Exact; x != nil {
+			row := []string{"", "exact"}
+			for _, mu := range list(x.MuUp) {
+				row = append(row, plain(mu, exactDigits))
+				reasons.missing(mu, p.Luminosity, x.Why)
+			}
+			g.add(row...)
+		}
 	}
 	if err := g.write(w); err != nil {
 		return err
@@ -77,6 +85,10 @@ func BandsJSON(w io.Writer, h Header, r *toys.BandsResult) error {
 			x := exclusionOf(*p.Toys, true)
 			point.Exclusion.Toys = &x
 		}
+		if p.Exact != nil {
+			x := exclusionOf(*p.Exact, false)
+			point.Exclusion.Exact = &x
+		}
 		out.Points = append(out.Points, point)
 	}
 	return writeJSON(w, out)
@@ -97,6 +109,11 @@ func BandsCSV(w io.Writer, _ Header, r *toys.BandsResult) error {
 		if x := p.Toys; x != nil {
 			row := append(fields(true, p.Luminosity), "toys")
 			row = append(row, exclusionFields(*x, true)...)
+			c.Write(append(row, x.Why))
+		}
+		if x := p.Exact; x != nil {
+			row := append(fields(true, p.Luminosity), "exact")
+			row = append(row, exclusionFields(*x, false)...)
 			c.Write(append(row, x.Why))
 		}
 	}

@@ -7,8 +7,8 @@ import (
 )
 
 // grid is a table of right-aligned cells, but for the first columns of words.
-// One rule stands under its header lines, in which a cell followed by across is
-// centred over both columns.
+// One rule stands under its header lines, in which a cell followed by across, once
+// or more often, is centred over all their columns.
 type grid struct {
 	words int   // left-aligned columns
 	gaps  []int // spaces before each column
@@ -36,11 +36,11 @@ func (g *grid) write(w io.Writer) error {
 			}
 		}
 	}
-	for _, line := range g.lines { // a text across two columns fits them
-		for k := range line[:max(0, len(line)-1)] {
-			if line[k+1] == across {
-				lack := utf8.RuneCountInString(line[k]) - widths[k] - g.gap(k+1) - widths[k+1]
-				widths[k+1] += max(0, lack)
+	for _, line := range g.lines { // a text across columns fits them
+		for k, cell := range line {
+			if n := spanned(line, k); n > 1 && cell != across {
+				lack := utf8.RuneCountInString(cell) - g.span(widths, k, n)
+				widths[k+n-1] += max(0, lack)
 			}
 		}
 	}
@@ -59,15 +59,11 @@ func (g *grid) write(w io.Writer) error {
 				continue
 			}
 			row.WriteString(strings.Repeat(" ", g.gap(k)))
-			wide := widths[k]
-			wants := k+1 < len(line) && line[k+1] == across
-			if wants {
-				wide += g.gap(k+1) + widths[k+1]
-			}
-			space := max(0, wide-utf8.RuneCountInString(cell))
+			n := spanned(line, k)
+			space := max(0, g.span(widths, k, n)-utf8.RuneCountInString(cell))
 			left := space
 			switch {
-			case wants:
+			case n > 1:
 				left = (space + 1) / 2
 			case k < g.words:
 				left = 0
@@ -78,6 +74,24 @@ func (g *grid) write(w io.Writer) error {
 	}
 	_, err := io.WriteString(w, b.String())
 	return err
+}
+
+// spanned is how many columns the cell at k of a line stands over.
+func spanned(line []string, k int) int {
+	n := 1
+	for k+n < len(line) && line[k+n] == across {
+		n++
+	}
+	return n
+}
+
+// span is the width of n columns from k with the gaps between them.
+func (g *grid) span(widths []int, k, n int) int {
+	wide := widths[k]
+	for i := k + 1; i < k+n; i++ {
+		wide += g.gap(i) + widths[i]
+	}
+	return wide
 }
 
 func (g *grid) gap(k int) int {

@@ -26,6 +26,9 @@ func ReachCSV(w io.Writer, _ Header, r *toys.ReachResult) error {
 		if p.Toys != nil {
 			c.Write(csvRow(p.Luminosity, "toys", *p.Toys, true))
 		}
+		if p.Exact != nil {
+			c.Write(csvRow(p.Luminosity, "exact", p.Exact.Answer, false))
+		}
 	}
 	c.Flush()
 	return c.Error()

@@ -144,6 +144,7 @@ type exclusionJSON struct {
 	MuUpError  *bandJSON `json:"mu_up_error,omitempty"`
 	MuUpOther  *partJSON `json:"mu_up_other,omitempty"`
 	Why        string    `json:"why,omitempty"`
+	Coverage   *number   `json:"coverage,omitempty"` // of μ = 1, by exact sums
 	Toys       *int      `json:"toys,omitempty"`
 	FailedFits *int      `json:"failed_fits,omitempty"`
 }
@@ -161,6 +162,7 @@ func exclusionOf(x toys.Exclusion, thrown bool) exclusionJSON {
 type engines[T any] struct {
 	Asymptotic T  `json:"asymptotic"`
 	Toys       *T `json:"toys,omitempty"`
+	Exact      *T `json:"exact,omitempty"`
 }
 
 type goalJSON struct {
@@ -226,11 +228,36 @@ type reachPointJSON struct {
 }
 
 type reachGoalJSON struct {
-	Goal       string    `json:"goal"`
-	Z          *number   `json:"z,omitempty"`
-	Confidence *number   `json:"confidence,omitempty"`
-	Asymptotic goalJSON  `json:"asymptotic"`
-	Toys       *goalJSON `json:"toys,omitempty"`
+	Goal       string         `json:"goal"`
+	Z          *number        `json:"z,omitempty"`
+	Confidence *number        `json:"confidence,omitempty"`
+	Asymptotic goalJSON       `json:"asymptotic"`
+	Toys       *goalJSON      `json:"toys,omitempty"`
+	Exact      *exactGoalJSON `json:"exact,omitempty"`
+}
+
+// exactGoalJSON has two luminosities for each fraction of experiments.
+type exactGoalJSON struct {
+	First         number `json:"first"`
+	AlwaysAfter   number `json:"always_after"`
+	Why           string `json:"why,omitempty"`
+	First80       number `json:"first_80"`
+	AlwaysAfter80 number `json:"always_after_80"`
+	Why80         string `json:"why_80,omitempty"`
+	First90       number `json:"first_90"`
+	AlwaysAfter90 number `json:"always_after_90"`
+	Why90         string `json:"why_90,omitempty"`
+}
+
+func exactGoalOf(g *toys.ExactGoal) *exactGoalJSON {
+	if g == nil {
+		return nil
+	}
+	return &exactGoalJSON{
+		number(g.First[0]), number(g.AlwaysAfter[0]), g.Why[0],
+		number(g.First[1]), number(g.AlwaysAfter[1]), g.Why[1],
+		number(g.First[2]), number(g.AlwaysAfter[2]), g.Why[2],
+	}
 }
 
 // ReachJSON writes the reach of a search for programs, format 1.
@@ -252,10 +279,15 @@ func ReachJSON(w io.Writer, h Header, r *toys.ReachResult) error {
 			d, x := discoveryOf(p.Toys.Discovery, true), exclusionOf(p.Toys.Exclusion, true)
 			point.Discovery.Toys, point.Exclusion.Toys = &d, &x
 		}
+		if p.Exact != nil {
+			d, x := discoveryOf(p.Exact.Discovery, false), exclusionOf(p.Exact.Exclusion, false)
+			x.Coverage = optional(p.Exact.Coverage)
+			point.Discovery.Exact, point.Exclusion.Exact = &d, &x
+		}
 		out.Points = append(out.Points, point)
 	}
 	for _, g := range r.Goals {
-		goal := reachGoalJSON{Goal: g.Name, Asymptotic: goalOf(g.Formula, false)}
+		goal := reachGoalJSON{Goal: g.Name, Asymptotic: goalOf(g.Formula, false), Exact: exactGoalOf(g.Exact)}
 		if g.Name == "exclusion" {
 			goal.Confidence = optional(g.Confidence)
 		} else {

@@ -75,38 +75,58 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 	if err := head(w, h, settings(r.Config, false)); err != nil {
 		return err
 	}
-	withToys := r.Config.Toys > 0
+	withToys, withExact := r.Config.Toys > 0, r.Points[0].Exact != nil
 	var reasons once
-	g := grid{gaps: []int{0, 4, 3, 4, 3, 4, 3}}
+	engines := []string{"formula"}
 	if withToys {
-		g.add("luminosity", "median Z", across, "chance of 5σ", across, "median limit on μ", across)
-		g.add("["+h.Unit+"]", "formula", "toys", "formula", "toys", "formula", "toys")
-	} else {
-		g.add("luminosity", "median Z", "chance of 5σ", "median limit on μ")
-		g.add("[" + h.Unit + "]")
+		engines = append(engines, "toys")
 	}
+	if withExact {
+		engines = append(engines, "exact")
+	}
+	g := grid{gaps: []int{0}}
+	title, names := []string{"luminosity"}, []string{"[" + h.Unit + "]"}
+	for _, block := range []string{"median Z", "chance of 5σ", "median limit on μ"} {
+		title = append(title, block)
+		for range engines[1:] {
+			title = append(title, across)
+		}
+		if len(engines) > 1 {
+			names = append(names, engines...)
+		}
+		g.gaps = append(g.gaps, 4)
+		for range engines[1:] {
+			g.gaps = append(g.gaps, 3)
+		}
+	}
+	g.add(title...)
+	g.add(names...)
 	g.header()
 	oneEvent := false
 	for _, p := range r.Points {
 		f := p.Formula
 		reasons.add(f.Discovery.Why)
 		reasons.add(f.Exclusion.Why)
-		row := []string{luminosity(p.Luminosity), plainZ(f.Discovery.Z.Median)}
+		z, chance, limit := []string{plainZ(f.Discovery.Z.Median)}, []string{percent(f.Discovery.Chance5)}, []string{plain(f.Exclusion.MuUp.Median, 3)}
 		if withToys {
-			row = append(row, toyZ(p.Toys.Discovery))
-		}
-		row = append(row, percent(f.Discovery.Chance5))
-		if withToys {
-			row = append(row, measuredPercent(p.Toys.Discovery.Chance5, p.Toys.Discovery.Chance5Error))
-		}
-		row = append(row, plain(f.Exclusion.MuUp.Median, 3))
-		if withToys {
-			x := p.Toys.Exclusion
-			row = append(row, toyLimit(x.MuUp.Median, x.MuUpError.Median, x.MuUpOther.Median))
-			reasons.missing(p.Toys.Discovery.Z.Median, p.Luminosity, p.Toys.Discovery.Why)
-			reasons.missing(p.Toys.Discovery.Chance5, p.Luminosity, p.Toys.Discovery.ChanceWhy)
+			d, x := p.Toys.Discovery, p.Toys.Exclusion
+			z = append(z, toyZ(d))
+			chance = append(chance, measuredPercent(d.Chance5, d.Chance5Error))
+			limit = append(limit, toyLimit(x.MuUp.Median, x.MuUpError.Median, x.MuUpOther.Median))
+			reasons.missing(d.Z.Median, p.Luminosity, d.Why)
+			reasons.missing(d.Chance5, p.Luminosity, d.ChanceWhy)
 			reasons.missing(x.MuUp.Median, p.Luminosity, x.Why)
 		}
+		if withExact {
+			d, x := p.Exact.Discovery, p.Exact.Exclusion
+			z = append(z, plain(d.Z.Median, exactDigits))
+			chance = append(chance, percent(d.Chance5))
+			limit = append(limit, plain(x.MuUp.Median, exactDigits))
+			reasons.missing(d.Z.Median, p.Luminosity, d.Why)
+			reasons.missing(x.MuUp.Median, p.Luminosity, x.Why)
+		}
+		row := append([]string{luminosity(p.Luminosity)}, z...)
+		row = append(append(row, chance...), limit...)
 		g.add(row...)
 		oneEvent = oneEvent || !math.IsNaN(f.Discovery.ChanceOne)
 	}
@@ -129,6 +149,12 @@ func ReachTable(w io.Writer, h Header, r *toys.ReachResult) error {
 	io.WriteString(w, "\n")
 	if err := goalsTable(h, r, &reasons).write(w); err != nil {
 		return err
+	}
+	if withExact {
+		io.WriteString(w, "\n")
+		if err := exactGoalsTable(h, r, &reasons).write(w); err != nil {
+			return err
+		}
 	}
 	notes := append(reasons, r.Notes...)
 	for _, c := range r.Checks {
@@ -171,12 +197,8 @@ func goalsTable(h Header, r *toys.ReachResult, reasons *once) *grid {
 	}
 	g.header()
 	for _, goal := range r.Goals {
-		name := fmt.Sprintf("%s, %sσ", goal.Name, luminosity(goal.Z))
-		if goal.Name == "exclusion" {
-			name = fmt.Sprintf("exclusion of μ = 1, %s %%", luminosity(100*goal.Confidence))
-		}
 		f := goal.Formula
-		row := []string{name, goalPlain(f.Luminosity)}
+		row := []string{goalName(goal), goalPlain(f.Luminosity)}
 		if !withToys {
 			g.add(append(row, goalPlain(f.Luminosity80), goalPlain(f.Luminosity90))...)
 		} else {
@@ -195,6 +217,43 @@ func goalsTable(h Header, r *toys.ReachResult, reasons *once) *grid {
 		}
 	}
 	return g
+}
+
+// exactDigits are those of numbers without error.
+const exactDigits = 4
+
+// exactGoalsTable tells, for each goal, the first luminosity that reaches it and
+// that after which it is always reached.
+func exactGoalsTable(h Header, r *toys.ReachResult, reasons *once) *grid {
+	g := &grid{words: 1, gaps: []int{0, 4, 3, 3}}
+	g.add("exact ["+h.Unit+"], first and always after", "half of experiments", "80 %", "90 %")
+	g.header()
+	for _, goal := range r.Goals {
+		row := []string{goalName(goal)}
+		for k, first := range goal.Exact.First {
+			row = append(row, firstAndAlways(first, goal.Exact.AlwaysAfter[k]))
+			if why := goal.Exact.Why[k]; why != "" {
+				reasons.add(goal.Name + ": " + why)
+			}
+		}
+		g.add(row...)
+	}
+	return g
+}
+
+func firstAndAlways(first, always float64) string {
+	a, b := plain(first, exactDigits), plain(always, exactDigits)
+	if a == b {
+		return a
+	}
+	return a + ", " + b
+}
+
+func goalName(g toys.Goal) string {
+	if g.Name == "exclusion" {
+		return fmt.Sprintf("exclusion of μ = 1, %s %%", luminosity(100*g.Confidence))
+	}
+	return fmt.Sprintf("%s, %sσ", g.Name, luminosity(g.Z))
 }
 
 func goalPlain(l float64) string { return plain(l, 3) }

@@ -8,8 +8,9 @@ import (
 )
 
 // Model compiles the scenario at a luminosity, in its Unit. Yields scale with
-// luminosity; shapes, parameters and the sizes of effects do not. Models share
-// their shapes and may be used at the same time.
+// luminosity and uncertainties shrink with it where they say so; shapes,
+// parameters and the sizes of the simulation do not change. Models share their
+// shapes and may be used at the same time.
 func (s *Scenario) Model(luminosity float64) (stats.Model, error) {
 	if !positive(luminosity) {
 		return stats.Model{}, fmt.Errorf("luminosity is %v, must be positive and finite", luminosity)
@@ -32,17 +33,26 @@ func (s *Scenario) Model(luminosity float64) (stats.Model, error) {
 				out.Processes[k].Move = make([][]stats.Effect, len(at))
 			}
 		}
+		tau, err := c.simulation()
+		if err != nil {
+			return stats.Model{}, err
+		}
+		out.Tau = tau
 		m.Channels[i] = out
 	}
 	for j, q := range s.parameters() {
 		m.Params = append(m.Params, q.Param)
+		scale := q.scale(luminosity)
 		for _, a := range q.actions {
 			p := &m.Channels[a.channel].Processes[a.process]
-			effect := stats.Effect{Param: j, Lin: a.lin}
+			effect := stats.Effect{Param: j, Lin: scale * a.lin}
+			if a.bend != 0 && scale > 0 {
+				effect.Bend, effect.Scale = a.bend, scale
+			}
 			switch {
 			case a.quantity == actsOnRate && !q.Constrained:
 				p.Factor = j
-			case a.lin == 0: // an uncertainty of size 0 moves nothing
+			case effect.Lin == 0 && effect.Bend == 0: // an uncertainty of size 0 moves nothing
 			case a.quantity == actsOnRate:
 				p.Rate = append(p.Rate, effect)
 			case p.Shape != nil: // one bin holds everything, wherever its peak stands

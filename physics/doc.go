@@ -1,10 +1,12 @@
 // Package physics describes a search: channels with their signals and
 // backgrounds, the shapes of these over a mass window, and the uncertainties
-// that act on them. It reads a scenario from a TOML file and compiles it, at
-// any luminosity, to the model that package stats fits.
+// that act on them, which may shrink with luminosity. It reads a scenario from a
+// TOML file, with templates in CSV files, and compiles it, at any luminosity, to
+// the model that package stats fits.
 //
-// It answers what is expected: events per process and bin at a luminosity, and
-// which parameter moves what by how much.
+// It answers what is expected: events per process and bin at a luminosity, which
+// parameter moves what by how much, and what the statistics of the simulation
+// leave uncertain.
 //
 // It refuses, in one line with file, line and column, whatever it cannot stand
 // behind: unknown keys, values of the wrong kind, names that do not exist,

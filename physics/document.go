@@ -43,12 +43,7 @@ func parse(file string, data []byte) (*document, table, error) {
 			return fail(1, 1, notTOML(err))
 		}
 		line, column := decode.Position()
-		text := data
-		for range line - 1 {
-			text = text[bytes.IndexByte(text, '\n')+1:]
-		}
-		column = 1 + utf8.RuneCount(text[:min(column-1, len(text))])
-		return fail(line, column, notTOML(err))
+		return fail(line, inCharacters(data, line, column), notTOML(err))
 	}
 	if len(values) == 0 {
 		return fail(1, 1, "the scenario is empty: it wants [luminosity] and at least one [[channel]]")

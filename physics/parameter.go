@@ -9,19 +9,30 @@ import (
 // parameter is a nuisance parameter with everything that it acts on.
 type parameter struct {
 	stats.Param
-	kind    ParameterKind
-	actions []action
+	kind        ParameterKind
+	uncertainty *Uncertainty // nil for a free one
+	actions     []action
 }
 
 // action is what one unit of a parameter does: lin is added to a quantity of a
-// shape or to the logarithm of a rate; a free rate is multiplied instead.
+// shape or to the logarithm of a rate, and to the latter what bends as in
+// stats.Effect; a free rate is multiplied instead. An uncertainty that shrinks
+// does it at Scale times its parameter.
 type action struct {
 	channel, process int
 	quantity         int // of the shape, or actsOnRate
-	lin              float64
+	lin, bend        float64
 }
 
 const actsOnRate = -1
+
+// scale is the factor on a parameter at a luminosity.
+func (q *parameter) scale(luminosity float64) float64 {
+	if q.uncertainty == nil {
+		return 1
+	}
+	return q.uncertainty.Scale(luminosity)
+}
 
 // parameters lists free parameters, then uncertainties, in the order of the
 // file.
@@ -56,10 +67,12 @@ func (s *Scenario) parameters() []parameter {
 			}
 		}
 	}
-	for _, u := range s.Uncertainties {
+	for i := range s.Uncertainties {
+		u := &s.Uncertainties[i]
 		q := parameter{
-			Param: stats.Param{Name: u.Name, Constrained: true, Lower: math.Inf(-1), Upper: math.Inf(1), Step: 1},
-			kind:  Constrained,
+			Param:       stats.Param{Name: u.Name, Constrained: true, Lower: math.Inf(-1), Upper: math.Inf(1), Step: 1},
+			kind:        Constrained,
+			uncertainty: u,
 		}
 		for _, e := range u.Effects {
 			q.actions = append(q.actions, s.action(e))
@@ -104,11 +117,25 @@ func (s *Scenario) action(e Effect) action {
 	if !known {
 		panic("physics: an effect on a process that the channel lacks")
 	}
-	lin := e.Shift
-	if e.Shift == 0 {
-		lin = math.Log1p(e.Size)
+	a := action{channel: i, process: k}
+	if e.Moves == movesTemplate {
+		a.quantity, a.lin = e.quantity, 1
+		return a
 	}
-	return action{channel: i, process: k, quantity: s.Channels[i].Processes[k].quantity(e.Moves), lin: lin}
+	a.quantity = s.Channels[i].Processes[k].quantity(e.Moves)
+	switch {
+	case e.Shift != 0:
+		a.lin = e.Shift
+	case e.Up == 0:
+		a.lin = math.Log1p(e.Size)
+	default:
+		up, down := math.Log(e.Up), math.Log(e.Down)
+		a.lin = (up - down) / 2
+		if e.Up*e.Down != 1 {
+			a.bend = (up + down) / 2
+		}
+	}
+	return a
 }
 
 // checkParameters refuses two parameters of one name, of which results could

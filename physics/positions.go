@@ -97,3 +97,13 @@ func lineColumn(document []byte, offset int) (line, column int) {
 	start := bytes.LastIndexByte(before, '\n') + 1
 	return line, 1 + utf8.RuneCount(before[start:])
 }
+
+// inCharacters turns a column in bytes, from 1, into one in characters, at most
+// the one behind the line.
+func inCharacters(document []byte, line, column int) int {
+	for range line - 1 {
+		document = document[bytes.IndexByte(document, '\n')+1:]
+	}
+	text, _, _ := bytes.Cut(document, []byte{'\n'})
+	return 1 + utf8.RuneCount(text[:min(column-1, len(text))])
+}

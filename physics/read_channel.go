@@ -119,6 +119,9 @@ func (s *Scenario) readChannel(t table) (c Channel) {
 	if !t.failed() {
 		c.refuseUnderflow(places)
 	}
+	if !t.failed() {
+		c.refuseErrors(t)
+	}
 	return c
 }
 

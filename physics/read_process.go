@@ -116,7 +116,9 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 			return
 		}
 		p.Form.File = t.text("file")
-		p.shape = t.readTemplate(p.Form.File, b)
+		if e := t.readTemplate("file", b); e != nil {
+			p.shape, p.errors = template{e.fractions}, e.errors
+		}
 		return
 	}
 	at := make([]float64, len(k.quantities))
@@ -150,6 +152,9 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 
 // nominal holds the quantities of a form in the units of its shape.
 func (p *Process) nominal() []float64 {
+	if s, moves := p.shape.(movingTemplate); moves {
+		return make([]float64, len(s.moves))
+	}
 	k, _ := kindNamed(p.Form.Kind)
 	at := make([]float64, len(p.Form.Quantities))
 	for a, q := range p.Form.Quantities {

@@ -8,15 +8,28 @@ import (
 	"io"
 	"math"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
-
-	"lumireach/stats"
 )
 
-// readTemplate reads a CSV file, whose path is relative to the scenario, into a
-// shape over the bins.
-func (t table) readTemplate(name string, b binning) stats.Shape {
+// events is what a template file holds.
+type events struct {
+	path      string
+	fractions []float64 // of the events in each bin; they sum to 1
+	// errors are the statistical errors of the fractions; nil where the file has
+	// none.
+	errors []float64
+	at     []place // of the events of each bin in the file
+}
+
+// place is a line and a column of a text, from 1, the column in characters.
+type place struct{ line, column int }
+
+// readTemplate reads the CSV file that a key names by a path relative to the
+// scenario. It gives nil where that fails.
+func (t table) readTemplate(key string, b binning) *events {
+	name := t.text(key)
 	if t.failed() {
 		return nil
 	}
@@ -26,19 +39,27 @@ func (t table) readTemplate(name string, b binning) stats.Shape {
 	}
 	data, what := readFile(path)
 	if what != "" {
-		t.failKey("file", "template %q: %s", name, what)
+		t.failKey(key, "template %q: %s", name, what)
 		return nil
 	}
-	events, err := readEvents(path, withoutMark(data), b)
+	out, err := readEvents(path, withoutMark(data), b)
 	if err != nil {
 		t.firstErr = err
 		return nil
 	}
-	return newTemplate(events)
+	return out
 }
 
-// readEvents reads the events of each bin from lines low,high,events.
-func readEvents(path string, data []byte, b binning) ([]float64, *Error) {
+// templateColumns are those of a template; the last may be left out.
+var templateColumns = []string{"low", "high", "events", "error"}
+
+var (
+	templateHeader = strings.Join(templateColumns[:3], ",")
+	errorHeader    = strings.Join(templateColumns, ",")
+)
+
+// readEvents reads a line for each bin under the header.
+func readEvents(path string, data []byte, b binning) (*events, *Error) {
 	if bad := firstNonText(data); bad >= 0 {
 		line, column := lineColumn(data, bad)
 		return nil, &Error{path, line, column, "not a text file: a template is CSV in UTF-8"}
@@ -47,40 +68,40 @@ func readEvents(path string, data []byte, b binning) ([]float64, *Error) {
 	lines.Comment = '#'
 	lines.TrimLeadingSpace = true
 	lines.FieldsPerRecord = -1
+	fail := func(line, column int, format string, args ...any) *Error {
+		return &Error{path, line, inCharacters(data, line, column), fmt.Sprintf(format, args...)}
+	}
 	at := func(field int, format string, args ...any) *Error {
 		line, column := lines.FieldPos(field)
-		return &Error{path, line, column, fmt.Sprintf(format, args...)}
+		return fail(line, column, format, args...)
 	}
 
-	const header = "low,high,events"
 	line, err := lines.Read()
 	if errors.Is(err, io.EOF) {
-		return nil, &Error{path, 1, 1, "the template is empty: its first line must be " + header}
+		return nil, fail(1, 1, "the template is empty: its first line must be %s or %s", templateHeader, errorHeader)
 	}
+	columns := len(line)
 	if err == nil {
 		for i := range line {
 			line[i] = strings.TrimSpace(line[i])
 		}
-		switch strings.Join(line, ",") {
-		case header:
-		case header + ",error":
-			return nil, at(3, "statistical errors of templates are not treated yet: leave the column error out")
-		default:
-			return nil, at(0, "the first line is %s, must be %s", shown(strings.Join(line, ",")), header)
+		if header := strings.Join(line, ","); header != templateHeader && header != errorHeader {
+			return nil, at(0, "the first line is %s, must be %s or %s", shown(header), templateHeader, errorHeader)
 		}
 	}
-	events := make([]float64, 0, b.bins)
+	out := &events{path: path}
+	var counts []float64
 	tolerance := 1e-9 * b.window()
-	total, previous := 0.0, math.NaN()
+	previous := math.NaN()
 	for err == nil {
 		line, err = lines.Read()
 		if err != nil {
 			break
 		}
-		if len(line) != 3 {
-			return nil, at(0, "there are %v columns, must be the three of %s", len(line), header)
+		if len(line) != columns {
+			return nil, at(0, "there are %v columns, must be the %v of the first line, %s", len(line), columns, strings.Join(templateColumns[:columns], ","))
 		}
-		var row [3]float64
+		var row [4]float64
 		for i, field := range line {
 			x, err := strconv.ParseFloat(strings.TrimSpace(field), 64)
 			if err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
@@ -88,8 +109,8 @@ func readEvents(path string, data []byte, b binning) ([]float64, *Error) {
 			}
 			row[i] = x
 		}
-		low, high, n := row[0], row[1], row[2]
-		bin := len(events)
+		low, high := row[0], row[1]
+		bin := len(counts)
 		switch {
 		case bin == b.bins:
 			return nil, at(0, "there are more lines than the %v bins of the channel", b.bins)
@@ -101,26 +122,63 @@ func readEvents(path string, data []byte, b binning) ([]float64, *Error) {
 			return nil, at(0, "low is %v, but bin %v of the channel begins at %v", low, bin+1, b.edge(bin))
 		case math.Abs(high-b.edge(bin+1)) > tolerance:
 			return nil, at(1, "high is %v, but bin %v of the channel ends at %v", high, bin+1, b.edge(bin+1))
-		case n < 0:
-			return nil, at(2, "events is %v, must be 0 or above", n)
+		}
+		for i, x := range row[2:columns] {
+			if x < 0 {
+				return nil, at(2+i, "%s is %v, must be 0 or above", templateColumns[2+i], x)
+			}
 		}
 		previous = high
-		events = append(events, n)
-		total = math.Max(total, n)
+		counts = append(counts, row[2])
+		if columns == 4 {
+			out.errors = append(out.errors, row[3])
+		}
+		start, column := lines.FieldPos(2)
+		out.at = append(out.at, place{start, inCharacters(data, start, column)})
 	}
 	if !errors.Is(err, io.EOF) {
 		var parse *csv.ParseError
 		if errors.As(err, &parse) {
-			return nil, &Error{path, parse.Line, parse.Column, "not valid CSV: " + parse.Err.Error()}
+			return nil, fail(parse.Line, parse.Column, "not valid CSV: %v", parse.Err)
 		}
 		return nil, &Error{File: path, What: reason(err)}
 	}
 	last := 1 + bytes.Count(bytes.TrimRight(data, "\r\n"), []byte{'\n'})
-	if len(events) < b.bins {
-		return nil, &Error{path, last, 1, fmt.Sprintf("there are %v lines of events, must be one for each of the %v bins of the channel", len(events), b.bins)}
+	if len(counts) < b.bins {
+		return nil, fail(last, 1, "there are %v lines of events, must be one for each of the %v bins of the channel", len(counts), b.bins)
 	}
-	if total == 0 {
-		return nil, &Error{path, last, 1, "all events are 0: a template needs a bin that is not empty"}
+	if slices.Max(counts) == 0 {
+		return nil, fail(last, 1, "all events are 0: a template needs a bin that is not empty")
 	}
-	return events, nil
+	out.normalise(counts)
+	return out, nil
+}
+
+// normalise turns events, not all zero, into fractions, and their errors
+// likewise. Scaling by the largest first keeps the sum finite.
+func (e *events) normalise(counts []float64) {
+	largest := slices.Max(counts)
+	e.fractions = make([]float64, len(counts))
+	total := 0.0
+	for i, n := range counts {
+		e.fractions[i] = n / largest
+		total += e.fractions[i]
+	}
+	for i := range e.fractions {
+		e.fractions[i] /= total
+	}
+	for i := range e.errors {
+		e.errors[i] = e.errors[i] / largest / total
+	}
+}
+
+// refuseEmpty finds a bin that is empty here and not in the nominal fractions:
+// no ratio leads from one to the other.
+func (e *events) refuseEmpty(nominal []float64) *Error {
+	for i, f := range nominal {
+		if e.fractions[i] == 0 && f > 0 {
+			return &Error{e.path, e.at[i].line, e.at[i].column, "events is 0, but the nominal template has some in this bin: no ratio leads from one to the other, so merge it with a neighbour"}
+		}
+	}
+	return nil
 }

@@ -16,7 +16,7 @@ func (s *Scenario) readUncertainties(top table) {
 	}
 }
 
-var effectKeys = []string{"process", "channels", "moves", "size", "shift"}
+var effectKeys = []string{"process", "channels", "moves", "size", "shift", "up", "down"}
 
 func (s *Scenario) readUncertainty(t table) (u Uncertainty) {
 	if !t.has("name") {
@@ -25,7 +25,7 @@ func (s *Scenario) readUncertainty(t table) (u Uncertainty) {
 	}
 	u.Name = t.text("name")
 	t.name = "uncertainty " + shown(u.Name)
-	t.only(append([]string{"name", "effects"}, effectKeys...)...)
+	t.only(append([]string{"name", "effects", "shrinks"}, effectKeys...)...)
 	effects := []table{t}
 	if t.has("effects") {
 		for _, key := range effectKeys {
@@ -40,6 +40,9 @@ func (s *Scenario) readUncertainty(t table) (u Uncertainty) {
 			return u
 		}
 		for _, e := range effects {
+			if e.has("shrinks") {
+				e.failKey("shrinks", "shrinks stands in an effect, must stand beside the name: it is of all effects")
+			}
 			e.only(effectKeys...)
 		}
 	}
@@ -54,6 +57,9 @@ func (s *Scenario) readUncertainty(t table) (u Uncertainty) {
 			}
 			u.Effects = append(u.Effects, effect)
 		}
+	}
+	if t.has("shrinks") {
+		u.readShrinks(t)
 	}
 	return u
 }
@@ -72,7 +78,7 @@ func (s *Scenario) readEffect(t table) []Effect {
 	if t.has("moves") {
 		moves = t.text("moves")
 	}
-	size, shift := t.readStep()
+	step := t.readStep(moves)
 	if t.failed() {
 		return nil
 	}
@@ -89,31 +95,95 @@ func (s *Scenario) readEffect(t table) []Effect {
 				t.fail(place, "channel %q has no process %s: %s", c.Name, shown(process), Suggest(process, c.processNames()))
 				return nil
 			}
+			effect := step
+			effect.Channel, effect.Process = c.Name, process
 			t.checkMove(c, &c.Processes[k], moves)
+			if !t.failed() && moves == movesTemplate {
+				effect.quantity = t.moveTemplate(c, &c.Processes[k])
+			}
 			if t.failed() {
 				return nil
 			}
-			out = append(out, Effect{Channel: c.Name, Process: process, Moves: moves, Size: size, Shift: shift})
+			out = append(out, effect)
 		}
 	}
 	return out
 }
 
-func (t table) readStep() (size, shift float64) {
+// readStep reads what one standard deviation does.
+func (t table) readStep(moves string) Effect {
+	e := Effect{Moves: moves}
+	pair := t.has("up") || t.has("down")
+	for _, key := range []string{"size", "shift"} {
+		switch {
+		case !t.has(key):
+		case moves == movesTemplate:
+			t.failKey(key, "a template is moved by up and down, two files, not by %s", key)
+		case pair:
+			t.failKey(key, "%s stands beside up and down: give either one step or both factors", key)
+		}
+	}
+	for _, keys := range [][2]string{{"up", "down"}, {"down", "up"}} {
+		if t.has(keys[0]) && !t.has(keys[1]) {
+			t.failKey(keys[0], "%s stands without %s: write both, for +1 and -1 standard deviation", keys[0], keys[1])
+		}
+	}
 	switch {
+	case t.failed():
+	case moves == movesTemplate && !pair:
+		t.fail(t.path, `%s moves a template: write up = "file.csv" and down = "file.csv"`, t.name)
+	case moves == movesTemplate:
+		e.UpFile, e.DownFile = t.text("up"), t.text("down")
+	case pair:
+		e.Up, e.Down = t.factor("up"), t.factor("down")
 	case t.has("size") && t.has("shift"):
 		t.failKey("shift", "size and shift stand together: size is relative (rates, widths), shift absolute (means, slopes)")
 	case t.has("size"):
-		size = t.number("size")
-		if !(size > -1) {
-			t.failKey("size", "size is %v, must be above -1: rates and widths stay positive", size)
+		e.Size = t.number("size")
+		if !(e.Size > -1) {
+			t.failKey("size", "size is %v, must be above -1: rates and widths stay positive", e.Size)
 		}
 	case t.has("shift"):
-		shift = t.number("shift")
+		e.Shift = t.number("shift")
 	default:
-		t.fail(t.path, "%s has neither size nor shift: write size = 0.03 for 3 %%, or a shift of a mean or slope", t.name)
+		t.fail(t.path, "%s has no size, no shift, no up and down: write size = 0.03 for 3 %%, or a shift of a mean or slope", t.name)
 	}
-	return size, shift
+	return e
+}
+
+// factor reads what a rate is multiplied by.
+func (t table) factor(key string) float64 {
+	if name, isText := t.values[key].(string); isText {
+		t.failKey(key, `%s is the text %s, must be a factor such as 1.04; a file moves a template, with moves = "template"`, key, shown(name))
+		return 0
+	}
+	x := t.number(key)
+	if !(x > 0) {
+		t.failKey(key, "%s is %v, must be above 0: the factor on the rate, such as 1.04 for 4 %% more", key, x)
+	}
+	return x
+}
+
+// moveTemplate lets an effect move the template of a process, and gives the
+// quantity for it.
+func (t table) moveTemplate(c *Channel, p *Process) (quantity int) {
+	shape := moving(p.shape)
+	var sides [2][]float64
+	for i, key := range []string{"up", "down"} {
+		side := t.readTemplate(key, c.binning())
+		if t.failed() {
+			return 0
+		}
+		if err := side.refuseEmpty(shape.nominal); err != nil {
+			t.firstErr = err
+			return 0
+		}
+		sides[i] = side.fractions
+	}
+	quantity = len(shape.moves)
+	shape.moves = append(shape.moves, newTemplateMove(shape.nominal, sides[0], sides[1]))
+	p.shape = shape
+	return quantity
 }
 
 // channelsOf lists the channels that an effect names or, where it names none,
@@ -155,13 +225,19 @@ func (s *Scenario) channelsOf(t table, process, place string) []int {
 // checkMove refuses an effect on what the process does not have, or by a step
 // of the wrong kind.
 func (t table) checkMove(c *Channel, p *Process, moves string) {
+	if moves == movesTemplate && p.Form.Kind == templateKind.name {
+		return
+	}
 	relative := true
 	if moves != "rate" {
 		k, _ := kindNamed(p.Form.Kind)
 		a := k.index(moves)
 		if a < 0 {
-			t.failKey("moves", "process %q of channel %q has no %s to move: %s",
-				p.Name, c.Name, shown(moves), Suggest(moves, append([]string{"rate"}, k.quantityNames()...)))
+			allowed := append([]string{"rate"}, k.quantityNames()...)
+			if k.fromFile {
+				allowed = append(allowed, movesTemplate)
+			}
+			t.failKey("moves", "process %q of channel %q has no %s to move: %s", p.Name, c.Name, shown(moves), Suggest(moves, allowed))
 			return
 		}
 		relative = k.quantities[a].relative
@@ -171,5 +247,11 @@ func (t table) checkMove(c *Channel, p *Process, moves string) {
 		t.failKey("shift", "a %s is moved by size, which is relative, not by shift", moves)
 	case !relative && t.has("size"):
 		t.failKey("size", "a %s is moved by shift, in its own unit, not by size", moves)
+	case moves != "rate" && t.has("up"):
+		step := "shift"
+		if relative {
+			step = "size"
+		}
+		t.failKey("up", "a %s is moved by %s, not by up and down, which are for rates and templates", moves, step)
 	}
 }

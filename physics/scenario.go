@@ -52,7 +52,8 @@ type Process struct {
 	// Tied is a label; backgrounds that share it share their free rate factor.
 	Tied string
 
-	shape stats.Shape // nil in a channel of one bin
+	shape  stats.Shape // nil in a channel of one bin
+	errors []float64   // of a template: statistical errors of its fractions; nil without
 }
 
 // Form is the shape of a process over the window as the scenario gives it.
@@ -73,6 +74,10 @@ type Quantity struct {
 type Uncertainty struct {
 	Name    string
 	Effects []Effect
+	// MeasuredAt is the luminosity, in Unit, at which the effects have the sizes
+	// given; 0 for an uncertainty that does not shrink. Scale tells how.
+	MeasuredAt float64
+	Floor      float64 // fraction that never shrinks, 0 to 1
 }
 
 // Effect is what one standard deviation of an uncertainty does to one process
@@ -80,11 +85,18 @@ type Uncertainty struct {
 type Effect struct {
 	Channel string
 	Process string
-	Moves   string // "rate" or a quantity of the process's form
+	Moves   string // "rate", a quantity of the process's form, or "template"
 	// Size is relative, > -1, for rates and widths: a factor 1+Size.
 	Size float64
 	// Shift is absolute, for means and slopes, in the unit of the quantity.
 	Shift float64
+	// Up and Down are the factors on a rate at +1 and -1 standard deviation, > 0;
+	// both 0 where Size says it.
+	Up, Down float64
+	// UpFile and DownFile are the templates at +1 and -1, as given.
+	UpFile, DownFile string
+
+	quantity int // of a template that is moved
 }
 
 //go:embed scenarios/demo.toml

@@ -64,9 +64,9 @@ func TestRead(t *testing.T) {
 			}},
 		},
 		Uncertainties: []Uncertainty{
-			{"photon efficiency", []Effect{{Channel: "two-photon", Process: "signal", Moves: "rate", Size: 0.03}}},
-			{"photon energy scale", []Effect{{Channel: "two-photon", Process: "signal", Moves: "mean", Shift: 0.4}}},
-			{"fake rate", []Effect{
+			{Name: "photon efficiency", Effects: []Effect{{Channel: "two-photon", Process: "signal", Moves: "rate", Size: 0.03}}},
+			{Name: "photon energy scale", Effects: []Effect{{Channel: "two-photon", Process: "signal", Moves: "mean", Shift: 0.4}}},
+			{Name: "fake rate", Effects: []Effect{
 				{Channel: "tau count", Process: "fakes", Moves: "rate", Size: 0.2},
 				{Channel: "tau count", Process: "signal", Moves: "rate", Size: -0.05},
 			}},

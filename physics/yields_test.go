@@ -51,16 +51,97 @@ func TestYields(t *testing.T) {
 		t.Errorf("tau control is %+v, want 480 events of background alone", control)
 	}
 
+	described := func(name string, kind ParameterKind, effects ...Acts) Parameter {
+		return Parameter{Name: name, Kind: kind, Scale: 1, Effects: effects}
+	}
 	want := []Parameter{
-		{"two-photon continuum rate", Free, []Acts{{"two-photon", "continuum", "rate", ""}}},
-		{"two-photon continuum slope", Free, []Acts{{"two-photon", "continuum", "slope", ""}}},
-		{"fakes rate", Tied, []Acts{{"tau count", "fakes", "rate", ""}, {"tau control", "fakes", "rate", ""}}},
-		{"photon efficiency", Constrained, []Acts{{"two-photon", "signal", "rate", "+3 %"}}},
-		{"photon energy scale", Constrained, []Acts{{"two-photon", "signal", "mean", "+0.4 GeV"}}},
-		{"fake rate", Constrained, []Acts{{"tau count", "fakes", "rate", "+20 %"}, {"tau count", "signal", "rate", "-5 %"}}},
+		described("two-photon continuum rate", Free, Acts{Channel: "two-photon", Process: "continuum", Moves: "rate"}),
+		described("two-photon continuum slope", Free, Acts{Channel: "two-photon", Process: "continuum", Moves: "slope"}),
+		described("fakes rate", Tied, Acts{Channel: "tau count", Process: "fakes", Moves: "rate"}, Acts{Channel: "tau control", Process: "fakes", Moves: "rate"}),
+		described("photon efficiency", Constrained, Acts{Channel: "two-photon", Process: "signal", Moves: "rate", Size: "+3 %", Up: 1.03, Down: 1 / 1.03}),
+		described("photon energy scale", Constrained, Acts{Channel: "two-photon", Process: "signal", Moves: "mean", Size: "+0.4 GeV", Shift: 0.4}),
+		described("fake rate", Constrained, Acts{Channel: "tau count", Process: "fakes", Moves: "rate", Size: "+20 %", Up: 1.2, Down: 1 / 1.2},
+			Acts{Channel: "tau count", Process: "signal", Moves: "rate", Size: "−5 %", Up: 0.95, Down: 1 / 0.95}),
+	}
+	for i := range want {
+		for k := range want[i].Effects {
+			got, exact := &y.Parameters[i].Effects[k], &want[i].Effects[k]
+			if math.Abs(got.Up-exact.Up) > 1e-15 || math.Abs(got.Down-exact.Down) > 1e-15 {
+				t.Errorf("%v: factors %v and %v, want %v and %v", want[i].Name, got.Up, got.Down, exact.Up, exact.Down)
+			}
+			got.Up, got.Down = exact.Up, exact.Down
+		}
 	}
 	if !reflect.DeepEqual(y.Parameters, want) {
 		t.Errorf("parameters are\n%+v, want\n%+v", y.Parameters, want)
+	}
+}
+
+// TestYieldsUncertain holds the sizes at 32 d, where efficiency counts by half
+// and radon by sqrt(0.25 + 0.75/4) = 0.6614, to powers of the factors: with
+// g(x) = (3x² - x⁴)/2 they are up^((g+x)/2) · down^((g-x)/2).
+func TestYieldsUncertain(t *testing.T) {
+	y := uncertain(t).Yields(32)
+	powers := func(up, down, x float64) float64 {
+		g := (3*x*x - x*x*x*x) / 2
+		return math.Pow(up, (g+x)/2) * math.Pow(down, (g-x)/2)
+	}
+	radon := math.Sqrt(0.25 + 0.75/4)
+	for _, tt := range []struct {
+		parameter, effect int
+		name, moves, size string
+		up, down, shift   float64
+	}{
+		{1, 0, "efficiency", "rate", "+10.78 % / −6.001 %", powers(1.25, 0.9, 0.5), powers(1.25, 0.9, -0.5), 0},
+		{2, 2, "radon", "rate", "+5.026 % / +11.25 %", powers(1.1, 1.2, radon), powers(1.1, 1.2, -radon), 0},
+		{2, 4, "radon", "rate", "+18.95 %", math.Pow(1.3, radon), math.Pow(1.3, -radon), 0},
+		{3, 2, "calibration", "mean", "+0.25 keV", 0, 0, 0.25},
+		// From 40, 30, 20, 10 to 30, 30, 20, 20 and back to the very same.
+		{3, 0, "calibration", "template", "−25 … +100 % / +0 … +0 %", 0, 0, 0},
+	} {
+		p := y.Parameters[tt.parameter]
+		a := p.Effects[tt.effect]
+		if p.Name != tt.name || a.Moves != tt.moves || a.Size != tt.size || a.Shift != tt.shift ||
+			math.Abs(a.Up-tt.up) > 1e-14 || math.Abs(a.Down-tt.down) > 1e-14 {
+			t.Errorf("effect %v of parameter %v is %q, %+v, want %+v", tt.effect, tt.parameter, p.Name, a, tt)
+		}
+	}
+	for i, want := range []Parameter{
+		{Name: "bulk dust rate", Kind: Free, Scale: 1},
+		{Name: "efficiency", Kind: Constrained, Shrinks: true, Scale: 0.5},
+		{Name: "radon", Kind: Constrained, Shrinks: true, Scale: radon},
+		{Name: "calibration", Kind: Constrained, Scale: 1},
+	} {
+		got := y.Parameters[i]
+		if got.Effects = nil; !reflect.DeepEqual(got, want) {
+			t.Errorf("parameter %v is %+v, want %+v", i, got, want)
+		}
+	}
+	if len(y.Parameters) != 4 {
+		t.Errorf("there are %v parameters, want 4", len(y.Parameters))
+	}
+
+	// From 40, 30, 20, 10 to 60, 20, 15, 5 and to 30, 30, 20, 20, by hand.
+	if size := uncertain(t).Yields(8).Parameters[2].Effects[0].Size; size != "−50 … +50 % / −25 … +100 %" {
+		t.Errorf("radon moves the template by %q", size)
+	}
+
+	// At 32 d, four times 8, what has no floor is halved.
+	shrinking := uncertain(t)
+	shrinking.Uncertainties[2].MeasuredAt = 8
+	if a := shrinking.Yields(32).Parameters[3].Effects[2]; a.Shift != 0.125 || a.Size != "+0.125 keV" {
+		t.Errorf("a shift of 0.25 shrunk to half is %+v", a)
+	}
+
+	// Relative errors by hand: 0.6/6 and sqrt(1.09)/5; 0.2/1 and 0.3/1; 0.2.
+	for i, want := range []*Simulation{{3, 0.1, math.Sqrt(1.09) / 5}, {3, 0.15, 0.3}, {1, 0.2, 0.2}} {
+		got := y.Channels[i].Simulation
+		if got == nil || got.Factors != want.Factors || math.Abs(got.Smallest-want.Smallest) > 1e-15 || math.Abs(got.Largest-want.Largest) > 1e-15 {
+			t.Errorf("simulation of channel %v is %+v, want %+v", i, got, want)
+		}
+	}
+	if c := Demo().Yields(1).Channels[0]; c.Simulation != nil {
+		t.Errorf("the demonstration has the simulation %+v, want none", c.Simulation)
 	}
 }
 

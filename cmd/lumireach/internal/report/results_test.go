@@ -183,12 +183,14 @@ func expectedYields() physics.Yields {
 					{Name: "dust", Form: physics.Form{Kind: "template"}, Events: 0},
 				},
 				Best:               &physics.Interval{FirstBin: 5, Bins: 4, Low: 4.5, High: 6.5, Signal: 8.123456, Background: 61.5},
-				SmallestBackground: 0.0123, SmallestTotal: 0.0345},
+				SmallestBackground: 0.0123, SmallestTotal: 0.0345,
+				Simulation: &physics.Simulation{Factors: 19, Smallest: 0.00312, Largest: 0.345}},
 			{Name: "singles", Bins: 1,
 				Signals:            []physics.Expected{{Name: "prompt", Events: 2e-7}, {Name: "late", Events: 3}},
 				Backgrounds:        []physics.Expected{{Name: "chance", Events: 12345678}},
 				Best:               &physics.Interval{Bins: 1, Low: nan, High: nan, Signal: 3, Background: 12345678},
-				SmallestBackground: 12345678, SmallestTotal: 12345681},
+				SmallestBackground: 12345678, SmallestTotal: 12345681,
+				Simulation: &physics.Simulation{Factors: 1, Smallest: 0.1, Largest: 0.1}},
 			{Name: "door open", Bins: 1,
 				Backgrounds:        []physics.Expected{{Name: "chance", Events: 40}},
 				SmallestBackground: nan, SmallestTotal: nan},
@@ -197,7 +199,13 @@ func expectedYields() physics.Yields {
 			{Name: "pairs wall glow slope", Kind: physics.Free, Effects: []physics.Acts{{Channel: "pairs", Process: "wall glow", Moves: "slope"}}},
 			{Name: "chance rate", Kind: physics.Tied, Effects: []physics.Acts{
 				{Channel: "singles", Process: "chance", Moves: "rate"}, {Channel: "door open", Process: "chance", Moves: "rate"}}},
-			{Name: "energy scale", Kind: physics.Constrained, Effects: []physics.Acts{{Channel: "pairs", Process: "signal", Moves: "mean", Size: "-0.05 keV"}}},
+			{Name: "energy scale", Kind: physics.Constrained, Scale: 1, Effects: []physics.Acts{
+				{Channel: "pairs", Process: "signal", Moves: "mean", Size: "−0.05 keV", Shift: -0.05}}},
+			{Name: "radon", Kind: physics.Constrained, Shrinks: true, Scale: 0.66143783, Effects: []physics.Acts{
+				{Channel: "pairs", Process: "dust", Moves: "template", Size: "−12 … +8 % / −7 … +13.5 %"},
+				{Channel: "pairs", Process: "dust", Moves: "rate", Size: "+4 % / −2 %", Up: 1.04, Down: 0.98}}},
+			{Name: "chance", Kind: physics.Constrained, Shrinks: true, Scale: 2, Effects: []physics.Acts{
+				{Channel: "singles", Process: "chance", Moves: "rate", Size: "+21 %", Up: 1.21, Down: 1 / 1.21}}},
 			{Name: "idle", Kind: physics.Constrained},
 		},
 	}

@@ -48,33 +48,90 @@ func YieldsTable(w io.Writer, h Header, y physics.Yields) error {
 		return err
 	}
 
-	if len(y.Parameters) > 0 {
-		io.WriteString(w, "\n")
-		g = grid{words: 6}
-		g.add("parameter", "kind", "channel", "process", "moves", "by")
-		g.header()
-		for _, p := range y.Parameters {
-			name, kind := p.Name, string(p.Kind)
-			for _, a := range p.Effects {
-				by := a.Size
-				if by == "" {
-					by = "the data"
-				}
-				g.add(name, kind, a.Channel, a.Process, a.Moves, by)
-				name, kind = "", ""
+	if err := writeParameters(w, y); err != nil {
+		return err
+	}
+	return foot(w, nil, yieldsNotes(y))
+}
+
+func writeParameters(w io.Writer, y physics.Yields) error {
+	g := grid{words: 6}
+	g.add("parameter", "kind", "channel", "process", "moves", "by")
+	g.header()
+	for _, p := range y.Parameters {
+		name, kind := p.Name, string(p.Kind)
+		for _, a := range p.Effects {
+			by := a.Size
+			if by == "" {
+				by = "the data"
 			}
-			if len(p.Effects) == 0 {
-				g.add(name, kind, dash, dash, dash, dash)
-			}
+			g.add(name, kind, a.Channel, a.Process, a.Moves, by)
+			name, kind = "", ""
 		}
-		if err := g.write(w); err != nil {
-			return err
+		if len(p.Effects) == 0 {
+			g.add(name, kind, dash, dash, dash, dash)
 		}
 	}
-	return foot(w, nil, []string{
+	name, kind := "simulation", string(physics.Constrained)
+	for _, c := range y.Channels {
+		sim := c.Simulation
+		if sim == nil {
+			continue
+		}
+		moves, by := "rate of one bin", "±"+percentage(sim.Smallest)+" %"
+		if sim.Factors > 1 {
+			moves = fmt.Sprintf("rates of %d bins", sim.Factors)
+			if most := "±" + percentage(sim.Largest) + " %"; most != by {
+				by += " to " + most
+			}
+		}
+		g.add(name, kind, c.Name, "all backgrounds", moves, by)
+		name, kind = "", ""
+	}
+	if len(g.lines) == g.rule {
+		return nil
+	}
+	if _, err := io.WriteString(w, "\n"); err != nil {
+		return err
+	}
+	return g.write(w)
+}
+
+func percentage(fraction float64) string { return plain(100*fraction, 2) }
+
+// yieldsNotes say how the table is read, as far as it needs saying.
+func yieldsNotes(y physics.Yields) []string {
+	notes := []string{
 		"Smallest bin: the smallest expected count, signal included, of a bin that the signal reaches. Below about 10, trust toys rather than formulas.",
-		"The sizes of the uncertainties do not change with luminosity.",
-	})
+	}
+	var shrunk []string
+	pairs, templates, simulation := false, false, false
+	for _, p := range y.Parameters {
+		if p.Shrinks {
+			shrunk = append(shrunk, fmt.Sprintf("%s (to %s)", p.Name, plain(p.Scale, 3)))
+		}
+		for _, a := range p.Effects {
+			pairs = pairs || strings.Contains(a.Size, " / ")
+			templates = templates || a.Moves == "template"
+		}
+	}
+	for _, c := range y.Channels {
+		simulation = simulation || c.Simulation != nil
+	}
+	if pairs {
+		notes = append(notes, "Two sizes are those of +1 and −1 standard deviation.")
+	}
+	if templates {
+		notes = append(notes, "The size of a template's move is the range, over its bins, in which their share of the events changes.")
+	}
+	if simulation {
+		notes = append(notes, "Simulation: the statistical error of the background templates, one factor on the whole background of each bin. It does not change with luminosity.")
+	}
+	if len(shrunk) == 0 {
+		return append(notes, "The sizes of the uncertainties do not change with luminosity.")
+	}
+	return append(notes, fmt.Sprintf("Shrinking with luminosity, and shown as they are at %s %s: %s. No other size changes.",
+		luminosity(y.Luminosity), y.Unit, strings.Join(shrunk, ", ")))
 }
 
 func orDash(s string) string {
@@ -104,6 +161,13 @@ type channelJSON struct {
 	Best               *intervalJSON  `json:"best_interval,omitempty"`
 	SmallestBackground *number        `json:"smallest_background_bin,omitempty"`
 	SmallestTotal      *number        `json:"smallest_bin,omitempty"`
+	Simulation         *simulatedJSON `json:"simulation,omitempty"`
+}
+
+type simulatedJSON struct {
+	Factors  int    `json:"factors"`
+	Smallest number `json:"smallest_error"`
+	Largest  number `json:"largest_error"`
 }
 
 type expectedJSON struct {
@@ -124,14 +188,18 @@ type intervalJSON struct {
 type parameterJSON struct {
 	Name    string     `json:"name"`
 	Kind    string     `json:"kind"`
+	Scale   *number    `json:"shrinks_to,omitempty"`
 	Effects []actsJSON `json:"effects"`
 }
 
 type actsJSON struct {
-	Channel string `json:"channel"`
-	Process string `json:"process"`
-	Moves   string `json:"moves"`
-	Size    string `json:"size,omitempty"`
+	Channel string  `json:"channel"`
+	Process string  `json:"process"`
+	Moves   string  `json:"moves"`
+	Size    string  `json:"size,omitempty"`
+	Up      *number `json:"up,omitempty"`
+	Down    *number `json:"down,omitempty"`
+	Shift   *number `json:"shift,omitempty"`
 }
 
 // YieldsJSON writes what a scenario expects at one luminosity for programs.
@@ -151,12 +219,25 @@ func YieldsJSON(w io.Writer, h Header, y physics.Yields) error {
 		if b := c.Best; b != nil {
 			channel.Best = &intervalJSON{b.FirstBin, b.Bins, optional(b.Low), optional(b.High), number(b.Signal), number(b.Background)}
 		}
+		if sim := c.Simulation; sim != nil {
+			channel.Simulation = &simulatedJSON{sim.Factors, number(sim.Smallest), number(sim.Largest)}
+		}
 		out.Channels = append(out.Channels, channel)
 	}
 	for _, p := range y.Parameters {
 		parameter := parameterJSON{Name: p.Name, Kind: string(p.Kind), Effects: []actsJSON{}}
+		if p.Shrinks {
+			parameter.Scale = optional(p.Scale)
+		}
 		for _, a := range p.Effects {
-			parameter.Effects = append(parameter.Effects, actsJSON{a.Channel, a.Process, a.Moves, a.Size})
+			acts := actsJSON{Channel: a.Channel, Process: a.Process, Moves: a.Moves, Size: a.Size}
+			switch {
+			case a.Up > 0:
+				acts.Up, acts.Down = optional(a.Up), optional(a.Down)
+			case a.Shift != 0:
+				acts.Shift = optional(a.Shift)
+			}
+			parameter.Effects = append(parameter.Effects, acts)
 		}
 		out.Parameters = append(out.Parameters, parameter)
 	}

@@ -21,7 +21,12 @@ var exponentialKind = kind{
 			return -limit - slope, limit - slope, 1 / b.window()
 		},
 	}},
-	make: func(b binning) stats.Shape { return exponential{b} },
+	make: func(b binning) stats.Shape {
+		if b.edges != nil {
+			return unequalExponential{b}
+		}
+		return exponential{b}
+	},
 	check: func(b binning, at []float64) (key, what string) {
 		limit := steepest / b.window()
 		if math.Abs(at[0]) < limit {
@@ -89,4 +94,91 @@ func (s exponential) Fill(q, f, d1, d2 []float64) {
 		x := (float64(i) - mean) * width
 		d2[i] = v * (x*x - variance)
 	}
+}
+
+// unequalExponential is exponential over bins of different widths.
+type unequalExponential struct{ binning }
+
+// Fill implements stats.Shape. With t = slope·w, a bin of width w and low edge x
+// holds w·exp(slope·x)·expm1(t)/t; the mean and variance of the density inside it
+// give the derivatives of its logarithm.
+func (s unequalExponential) Fill(q, f, d1, d2 []float64) {
+	if len(f) != s.bins {
+		panic(wrongBins)
+	}
+	slope := q[0]
+	if math.IsNaN(slope) || math.IsInf(slope, 0) {
+		undefined(f, d1, d2)
+		return
+	}
+	// The end where the density is largest counts as 1.
+	reference := s.low
+	if slope > 0 {
+		reference = s.high
+	}
+	total := 0.0
+	for i := range f {
+		low, high := s.edges[i], s.edges[i+1]
+		t := math.Abs(slope) * (high - low)
+		near := low // the edge where the density is larger
+		if slope > 0 {
+			near = high
+		}
+		f[i] = (high - low) * math.Exp(slope*(near-reference)) * decay(t)
+		total += f[i]
+	}
+	for i := range f {
+		f[i] /= total
+	}
+	if d1 == nil {
+		return
+	}
+	// ∂f/∂slope = f (m - <x>) and ∂²f/∂slope² = f ((m - <x>)² + v - Var x), m and v
+	// being the mean and variance inside the bin. Positions count from low.
+	mean := 0.0
+	for i, v := range f {
+		m, _ := s.inside(i, slope)
+		d1[i] = m
+		mean += v * m
+	}
+	variance := 0.0
+	for i, v := range f {
+		_, w := s.inside(i, slope)
+		x := d1[i] - mean
+		d2[i] = x*x + w
+		variance += v * d2[i]
+		d1[i] = v * x
+	}
+	for i, v := range f {
+		d2[i] = v * (d2[i] - variance)
+	}
+}
+
+// decay is (1 - exp(-t))/t for t >= 0.
+func decay(t float64) float64 {
+	if t < 1e-8 {
+		return 1 - t/2
+	}
+	return -math.Expm1(-t) / t
+}
+
+// inside is the mean, from the low end of the window, and the variance of the
+// density within bin i.
+func (s unequalExponential) inside(i int, slope float64) (mean, variance float64) {
+	low, width := s.edges[i], s.edges[i+1]-s.edges[i]
+	t := math.Abs(slope) * width
+	var m, v float64 // from the edge where the density is larger, over the width
+	if t < 0.02 {
+		square := t * t
+		m = 0.5 - t/12*(1-square/60*(1-square/42))
+		v = 1./12 - square/240*(1-square/25.2)
+	} else {
+		gone := math.Exp(-t)
+		m = 1/t - gone/(1-gone)
+		v = 1/(t*t) - gone/((1-gone)*(1-gone))
+	}
+	if slope > 0 {
+		m = 1 - m
+	}
+	return low - s.low + m*width, v * width * width
 }

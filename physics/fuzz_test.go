@@ -107,7 +107,7 @@ func checkFinite(t *testing.T, effects []stats.Effect) {
 // FuzzTemplate: any bytes give either one line or fractions that sum to one with
 // errors that are not negative, and written out they give the same again.
 func FuzzTemplate(f *testing.F) {
-	b := binning{100, 160, 4}
+	b := equalBins(100, 160, 4)
 	for _, pattern := range []string{"testdata/*.csv", "../testdata/bad/*.csv"} {
 		paths, err := filepath.Glob(filepath.FromSlash(pattern))
 		if err != nil || len(paths) == 0 {

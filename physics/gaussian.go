@@ -26,9 +26,12 @@ var gaussianKind = kind{
 		},
 	},
 	make: func(b binning) stats.Shape {
-		s := gaussian{binning: b, edges: make([]float64, b.bins+1)}
-		for i := range s.edges {
-			s.edges[i] = b.edge(i)
+		s := gaussian{binning: b, at: make([]float64, b.bins+1), stretch: 16, narrow: 1e-3 / b.binWidth()}
+		if b.edges != nil {
+			s.stretch, s.narrow = 1, 0.03/b.widestBin()
+		}
+		for i := range s.at {
+			s.at[i] = b.edge(i)
 		}
 		return s
 	},
@@ -44,7 +47,9 @@ var gaussianKind = kind{
 // the window, and the logarithm of the width in that unit.
 type gaussian struct {
 	binning
-	edges []float64
+	at      []float64 // edges
+	stretch int       // edges along which the density may be carried on by a ratio
+	narrow  float64   // largest 1/width at which the density itself is integrated
 }
 
 // emptyWindow is the largest share of a peak that counts as nothing: below it
@@ -63,7 +68,7 @@ func (s gaussian) Fill(q, f, d1, d2 []float64) {
 	var total float64
 	switch {
 	case !(inverse > 0) || math.IsInf(inverse*inverse, 1) || math.IsNaN(mean) || math.IsInf(mean, 0):
-	case s.binWidth()*inverse < 1e-3:
+	case inverse < s.narrow:
 		total = s.fillWide(mean, inverse, f, d1, d2, &t1, &t2)
 	default:
 		total = s.fillEdges(mean, inverse, f, d1, d2, &t1, &t2)
@@ -88,10 +93,10 @@ func (s gaussian) fillEdges(mean, inverse float64, f, d1, d2 []float64, t1 *[2]f
 		return total
 	}
 	i := min(max(int((mean-s.low)/s.binWidth()), 0), bins-1)
-	for i > 0 && mean < s.edges[i] {
+	for i > 0 && mean < s.at[i] {
 		i--
 	}
-	for i < bins-1 && mean > s.edges[i+1] {
+	for i < bins-1 && mean > s.at[i+1] {
 		i++
 	}
 	below, left := s.fillSide(i, -1, mean, inverse, f, d1, d2, t1, t2)
@@ -135,7 +140,7 @@ func (s gaussian) fillSide(first, dir int, mean, inverse float64, f, d1, d2 []fl
 		fmm, fmu, fuu = d2[:bins], d2[bins:][:bins], d2[2*bins:][:bins]
 	}
 
-	z := (s.edges[first] - mean) * signed
+	z := (s.at[first] - mean) * signed
 	bin, end := first, bins
 	if dir < 0 {
 		bin, end = first-1, -1
@@ -148,21 +153,21 @@ func (s gaussian) fillSide(first, dir int, mean, inverse float64, f, d1, d2 []fl
 		beyond, zp, mixed, second = start.beyond, start.zp, start.mixed, start.second
 
 		// Along equal steps the density shrinks by a factor that itself shrinks
-		// by exp(-step²); it starts anew before rounding accumulates.
-		const stretch = 16
+		// by exp(-step²); it starts anew before rounding accumulates, and at every
+		// edge where steps differ.
 		ratio := math.Exp(-step * (z + 0.5*step))
 		for fresh := 1; bin != end; fresh++ {
 			edge := bin
 			if dir > 0 {
 				edge++
 			}
-			z = (s.edges[edge] - mean) * signed
+			z = (s.at[edge] - mean) * signed
 			if z > farthest {
 				break
 			}
 			next := p * ratio
 			ratio *= shrink
-			if fresh == stretch {
+			if fresh == s.stretch {
 				fresh = 0
 				next = normalDensity(z)
 				ratio = math.Exp(-step * (z + 0.5*step))
@@ -230,15 +235,15 @@ func (s gaussian) fillWide(mean, inverse float64, f, d1, d2 []float64, t1 *[2]fl
 	if 0.5*nearest*nearest > -math.Log(emptyWindow) {
 		return 0
 	}
-	half := 0.5 * (highest - lowest) / float64(bins)
-	offsets := [3]float64{-half * math.Sqrt(0.6), 0, half * math.Sqrt(0.6)}
-	weights := [3]float64{5. / 18, 8. / 18, 5. / 18}
+	weights, scale := [3]float64{5. / 18, 8. / 18, 5. / 18}, 1/s.binWidth()
 	for i := range f {
-		centre := (0.5*(s.edges[i]+s.edges[i+1]) - mean) * inverse
+		centre := (0.5*(s.at[i]+s.at[i+1]) - mean) * inverse
+		width := s.at[i+1] - s.at[i]
+		offset, part := math.Sqrt(0.15)*width*inverse, width*scale
 		var sum [5]float64 // ∫ z^n φ
-		for k, offset := range offsets {
-			z := centre + offset
-			v := weights[k] * math.Exp(-0.5*(z-nearest)*(z+nearest))
+		for k, weight := range weights {
+			z := centre + float64(k-1)*offset
+			v := part * weight * math.Exp(-0.5*(z-nearest)*(z+nearest))
 			for n := range sum {
 				sum[n] += v
 				v *= z

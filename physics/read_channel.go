@@ -68,10 +68,13 @@ func (c *Channel) processNames() []string {
 }
 
 func (c *Channel) binning() binning {
-	if len(c.Window) == 0 {
+	switch {
+	case len(c.Edges) > 0:
+		return unequalBins(c.Edges)
+	case len(c.Window) == 0:
 		return binning{bins: c.Bins}
 	}
-	return binning{c.Window[0], c.Window[1], c.Bins}
+	return equalBins(c.Window[0], c.Window[1], c.Bins)
 }
 
 func (s *Scenario) readChannel(t table) (c Channel) {
@@ -81,22 +84,13 @@ func (s *Scenario) readChannel(t table) (c Channel) {
 	}
 	c.Name = t.text("name")
 	t.name = "channel " + shown(c.Name)
-	t.only("name", "unit", "window", "bins", "signal", "background")
+	t.only("name", "unit", "window", "bins", "edges", "signal", "background")
 	if t.has("unit") {
 		c.Unit = t.text("unit")
 	}
-	if !t.has("bins") {
-		t.missing("bins", "bins = 60, or bins = 1 for a count")
-		return c
-	}
-	c.Bins = t.whole("bins", 1, mostBins)
+	c.readBins(t)
 	if t.failed() {
 		return c
-	}
-	if t.has("window") {
-		c.Window = readWindow(t, c.Bins)
-	} else if c.Bins > 1 {
-		t.missing("window", "window = [low, high], or bins = 1 for a count")
 	}
 	signals := t.tables("signal", "a signal of "+t.name, "[[channel.signal]]")
 	backgrounds := t.tables("background", "a background of "+t.name, "[[channel.background]]")
@@ -123,6 +117,54 @@ func (s *Scenario) readChannel(t table) (c Channel) {
 		c.refuseErrors(t)
 	}
 	return c
+}
+
+// readBins reads the window and its bins, equal or by their edges.
+func (c *Channel) readBins(t table) {
+	if t.has("edges") {
+		for _, key := range []string{"window", "bins"} {
+			if t.has(key) {
+				t.failKey(key, "edges and %s stand together: edges say both where the window is and what its bins are", key)
+				return
+			}
+		}
+		c.readEdges(t)
+		return
+	}
+	if !t.has("bins") {
+		t.missing("bins", "bins = 60, or edges = [low, …, high], or bins = 1 for a count")
+		return
+	}
+	c.Bins = t.whole("bins", 1, mostBins)
+	switch {
+	case t.failed():
+	case t.has("window"):
+		c.Window = readWindow(t, c.Bins)
+	case c.Bins > 1:
+		t.missing("window", "window = [low, high], or bins = 1 for a count")
+	}
+}
+
+// readEdges reads bins of any widths.
+func (c *Channel) readEdges(t table) {
+	edges := t.numbers("edges", "a list of rising numbers")
+	if t.failed() {
+		return
+	}
+	last := len(edges) - 1
+	if last < 1 || last > mostBins {
+		t.failKey("edges", "edges is a list of %v, must be of 2 to %v rising numbers", len(edges), mostBins+1)
+		return
+	}
+	const resolution = 1e-12
+	farthest := math.Max(math.Abs(edges[0]), math.Abs(edges[last]))
+	for i := range last {
+		if !(edges[i+1]-edges[i] > resolution*farthest) || math.IsInf(edges[i+1]-edges[i], 1) {
+			t.failKey("edges", "edges has %v after %v, must rise", edges[i+1], edges[i])
+			return
+		}
+	}
+	c.Bins, c.Window, c.Edges = last, []float64{edges[0], edges[last]}, edges
 }
 
 func readWindow(t table, bins int) []float64 {

@@ -27,7 +27,7 @@ type Scenario struct {
 	Uncertainties []Uncertainty
 }
 
-// Channel is one selection of events: a count, or a window of equal bins.
+// Channel is one selection of events: a count, or a window of bins.
 type Channel struct {
 	Name string
 	Unit string // of the window, a label, "" if not given
@@ -35,6 +35,7 @@ type Channel struct {
 	// without one.
 	Window    []float64
 	Bins      int
+	Edges     []float64 // of bins that are given by them, else nil
 	Processes []Process // signals first, each in the order of the file
 }
 

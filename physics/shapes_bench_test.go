@@ -8,7 +8,7 @@ import (
 )
 
 func BenchmarkFill(b *testing.B) {
-	window := binning{100, 160, 60}
+	window := equalBins(100, 160, 60)
 	for _, bench := range []struct {
 		name  string
 		shape stats.Shape

@@ -56,26 +56,30 @@ func TestGaussianFractions(t *testing.T) {
 		b           binning
 		mean, width float64
 	}{
-		{"peak in a window", binning{100, 160, 60}, 126, 1.6},
-		{"mean at an edge", binning{100, 160, 60}, 126, 0.8},
-		{"mean at the low end", binning{100, 160, 60}, 100, 3},
-		{"mean at the high end", binning{100, 160, 60}, 160, 3},
-		{"between two edges", binning{0, 10, 10}, 4.3, 0.5},
-		{"narrow against a bin", binning{0, 10, 10}, 4.3, 0.02},
-		{"narrow beside an edge", binning{0, 10, 10}, 4.0001, 0.001},
-		{"below the window", binning{100, 160, 60}, 80, 7},
-		{"above the window", binning{100, 160, 60}, 200, 9},
-		{"window in the tail beyond 33 widths", binning{33, 34, 20}, 0, 1},
-		{"window in the tail below -33 widths", binning{-34, -33, 20}, 0, 1},
-		{"bins of three widths", binning{-30, 30, 20}, 1, 1},
-		{"wider than the window", binning{100, 160, 60}, 126, 300},
-		{"a thousand windows wide", binning{100, 160, 60}, 126, 6e4},
-		{"a million windows wide", binning{100, 160, 60}, -500, 6e7},
-		{"wide, narrow bins, in the tail", binning{30, 30.5, 1000}, 0, 1},
-		{"wide, narrow bins, in the low tail", binning{-30.5, -30, 1000}, 0, 1},
-		{"many bins", binning{-5, 5, 9000}, 0.1, 1},
-		{"negative masses", binning{-160, -100, 60}, -126, 1.6},
-		{"one bin", binning{100, 160, 1}, 126, 1.6},
+		{"peak in a window", equalBins(100, 160, 60), 126, 1.6},
+		{"mean at an edge", equalBins(100, 160, 60), 126, 0.8},
+		{"mean at the low end", equalBins(100, 160, 60), 100, 3},
+		{"mean at the high end", equalBins(100, 160, 60), 160, 3},
+		{"between two edges", equalBins(0, 10, 10), 4.3, 0.5},
+		{"narrow against a bin", equalBins(0, 10, 10), 4.3, 0.02},
+		{"narrow beside an edge", equalBins(0, 10, 10), 4.0001, 0.001},
+		{"below the window", equalBins(100, 160, 60), 80, 7},
+		{"above the window", equalBins(100, 160, 60), 200, 9},
+		{"window in the tail beyond 33 widths", equalBins(33, 34, 20), 0, 1},
+		{"window in the tail below -33 widths", equalBins(-34, -33, 20), 0, 1},
+		{"bins of three widths", equalBins(-30, 30, 20), 1, 1},
+		{"wider than the window", equalBins(100, 160, 60), 126, 300},
+		{"a thousand windows wide", equalBins(100, 160, 60), 126, 6e4},
+		{"a million windows wide", equalBins(100, 160, 60), -500, 6e7},
+		{"wide, narrow bins, in the tail", equalBins(30, 30.5, 1000), 0, 1},
+		{"wide, narrow bins, in the low tail", equalBins(-30.5, -30, 1000), 0, 1},
+		{"many bins", equalBins(-5, 5, 9000), 0.1, 1},
+		{"negative masses", equalBins(-160, -100, 60), -126, 1.6},
+		{"one bin", equalBins(100, 160, 1), 126, 1.6},
+		{"unequal bins", unequalBins([]float64{100, 101, 110, 120, 124, 125, 125.5, 126.2, 128, 160}), 126, 1.6},
+		{"unequal bins, far in the tail", unequalBins([]float64{20, 21, 21.5, 24, 30}), 0, 1},
+		{"unequal bins, some of them tiny", unequalBins([]float64{0, 3, 3.0001, 3.0002, 4, 7}), 3.2, 1},
+		{"unequal bins, wider than the window", unequalBins([]float64{0, 3, 3.5, 4, 7}), 3.2, 500},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
 			f := make([]float64, tt.b.bins)
@@ -92,7 +96,8 @@ func TestGaussianFractions(t *testing.T) {
 }
 
 func TestExponentialFractions(t *testing.T) {
-	for _, b := range []binning{{100, 160, 60}, {-3, 5, 7}, {0, 1, 1000}, {10, 20, 1}} {
+	for _, b := range []binning{equalBins(100, 160, 60), equalBins(-3, 5, 7), equalBins(0, 1, 1000), equalBins(10, 20, 1),
+		unequalBins([]float64{0, 1, 1.5, 4, 4.001, 9, 30})} {
 		for _, steepness := range []float64{0, 1e-300, 1e-12, -1e-6, 0.1, -1.7, 30, -300, 690, -690} {
 			slope := steepness / b.window()
 			f := make([]float64, b.bins)
@@ -115,7 +120,7 @@ func TestLongWindowsDoNotDrift(t *testing.T) {
 	const bins = 10000
 	f := make([]float64, bins)
 	for _, slope := range []float64{-0.7, -1, -2.9, -17} {
-		exponentialKind.make(binning{0, 1, bins}).Fill([]float64{slope}, f, nil, nil)
+		exponentialKind.make(equalBins(0, 1, bins)).Fill([]float64{slope}, f, nil, nil)
 		for i, v := range f {
 			want := f[0] * math.Exp(slope*float64(i)/bins)
 			if !(math.Abs(v/want-1) < 2e-14) {
@@ -123,7 +128,7 @@ func TestLongWindowsDoNotDrift(t *testing.T) {
 			}
 		}
 	}
-	gaussianKind.make(binning{0, 10.5, bins}).Fill([]float64{0, 0}, f, nil, nil)
+	gaussianKind.make(equalBins(0, 10.5, bins)).Fill([]float64{0, 0}, f, nil, nil)
 	last := 1.0
 	for i, v := range f {
 		next := math.Erfc(10.5 * float64(i+1) / bins / math.Sqrt2)
@@ -138,10 +143,16 @@ func TestLongWindowsDoNotDrift(t *testing.T) {
 
 func TestFixedFractions(t *testing.T) {
 	f := make([]float64, 4)
-	uniform{4}.Fill(nil, f, nil, nil)
+	uniform{equalBins(100, 160, 4)}.Fill(nil, f, nil, nil)
 	for i, v := range f {
 		if v != 0.25 {
 			t.Errorf("uniform: bin %v holds %v, want 0.25", i, v)
+		}
+	}
+	uniform{unequalBins([]float64{0, 1, 3, 4, 8})}.Fill(nil, f, nil, nil)
+	for i, want := range []float64{0.125, 0.25, 0.125, 0.5} {
+		if f[i] != want {
+			t.Errorf("uniform: bin %v holds %v, want %v", i, f[i], want)
 		}
 	}
 	newTemplate([]float64{1.6e308, 0, 0.8e308, 0.8e308}).Fill(nil, f, nil, nil)
@@ -227,7 +238,15 @@ func compareDerivatives(t *rapid.T, order string, got, want []float64) {
 
 func drawBinning(t *rapid.T) binning {
 	low := rapid.Float64Range(-200, 200).Draw(t, "low")
-	return binning{low, low + rapid.Float64Range(0.1, 100).Draw(t, "window"), rapid.IntRange(1, 80).Draw(t, "bins")}
+	b := equalBins(low, low+rapid.Float64Range(0.1, 100).Draw(t, "window"), rapid.IntRange(1, 80).Draw(t, "bins"))
+	if !rapid.Bool().Draw(t, "unequal") {
+		return b
+	}
+	edges := []float64{b.low}
+	for i := 1; i < b.bins; i++ {
+		edges = append(edges, b.edge(i)+0.4*b.binWidth()*rapid.Float64Range(-1, 1).Draw(t, "shift"))
+	}
+	return unequalBins(append(edges, b.high))
 }
 
 func TestGaussianDerivatives(t *testing.T) {
@@ -240,7 +259,7 @@ func TestGaussianDerivatives(t *testing.T) {
 		mean := b.low + b.window()*rapid.Float64Range(0, 1).Draw(t, "place")
 		outside := width * rapid.Float64Range(-8, 8).Draw(t, "outside")
 		if rapid.Bool().Draw(t, "narrow") {
-			b = binning{0, float64(b.bins), b.bins} // where the mean's rounding is small against the width
+			b = equalBins(0, float64(b.bins), b.bins) // where the mean's rounding is small against the width
 			width = b.binWidth() * rapid.Float64Range(0.005, 0.03).Draw(t, "width in bins")
 			mean = b.edge(rapid.IntRange(0, b.bins).Draw(t, "edge"))
 			outside = width * rapid.Float64Range(-3, 3).Draw(t, "outside")
@@ -264,7 +283,7 @@ func TestExponentialDerivatives(t *testing.T) {
 // TestGaussianPathsAgree holds the two ways of computing together where one
 // takes over from the other, far from the mean as well.
 func TestGaussianPathsAgree(t *testing.T) {
-	b := binning{0, 1, 40}
+	b := equalBins(0, 1, 40)
 	s := gaussianKind.make(b).(gaussian)
 	for _, far := range []float64{0, 0.5, -3, 20} {
 		width := b.binWidth() / 1.0001e-3
@@ -311,7 +330,7 @@ func TestMills(t *testing.T) {
 }
 
 func TestUndefinedShapes(t *testing.T) {
-	b := binning{100, 160, 6}
+	b := equalBins(100, 160, 6)
 	for _, tt := range []struct {
 		name  string
 		shape stats.Shape
@@ -344,7 +363,7 @@ func TestUndefinedShapes(t *testing.T) {
 }
 
 func TestFillDoesNotAllocate(t *testing.T) {
-	b := binning{100, 160, 60}
+	b := equalBins(100, 160, 60)
 	f := make([]float64, b.bins)
 	d1 := make([]float64, 2*b.bins)
 	d2 := make([]float64, 3*b.bins)
@@ -372,7 +391,7 @@ func firstBinOnly(bins int) []float64 {
 }
 
 func TestFillWrongBinsPanics(t *testing.T) {
-	b := binning{100, 160, 60}
+	b := equalBins(100, 160, 60)
 	for _, shape := range []stats.Shape{gaussianKind.make(b), exponentialKind.make(b), uniformKind.make(b), newTemplate(firstBinOnly(60))} {
 		func() {
 			defer func() {

@@ -49,6 +49,19 @@ func exclusionZ(f *Fitter, background *Data, mu float64) (float64, error) {
 	return math.Sqrt(fit.Deviance), nil
 }
 
+// AsimovQTilde is q̃_μ of the Asimov experiment without signal, NaN where its fit
+// fails.
+func (e *Engine) AsimovQTilde(mu float64) float64 {
+	f := e.Fitter()
+	background := e.Point(0, nil).Asimov()
+	f.start(background, mu)
+	z, err := exclusionZ(f, background, mu)
+	if err != nil {
+		return math.NaN()
+	}
+	return z * z
+}
+
 // limitZ is what sqrt(q̃_μ) of the Asimov experiment is at the n-sigma expected
 // CLs limit: n + Φ⁻¹(1 - αΦ(n)), from the distributions of q̃_μ of CCGV
 // section 3.7 and CLs = p_{s+b}/(1 - p_b) (Read, J. Phys. G 28 (2002) 2693).

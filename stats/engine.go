@@ -116,6 +116,24 @@ func Prepare(m Model) (*Engine, error) {
 // Bins is the number of bins of all channels together.
 func (e *Engine) Bins() int { return e.bins }
 
+// SmallestControl is the smallest expectation of a channel without signal, +Inf
+// where every channel has some.
+func (e *Engine) SmallestControl() float64 {
+	lambda := e.Point(0, nil).Lambda
+	smallest := posInf
+	for _, c := range e.channels {
+		signal, total := 0.0, 0.0
+		for bin, s := range c.signalBins {
+			signal += s
+			total += lambda[c.first+bin]
+		}
+		if signal == 0 {
+			smallest = math.Min(smallest, total)
+		}
+	}
+	return smallest
+}
+
 // Factors is the number of simulation factors.
 func (e *Engine) Factors() int { return len(e.taus) }
 

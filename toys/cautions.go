@@ -92,6 +92,19 @@ func bandsCautions(r *BandsResult, engines []*stats.Engine) []string {
 	return out
 }
 
+// crosscheckCautions are those of a cross-check.
+func crosscheckCautions(r *CrosscheckResult, engines []*stats.Engine, p plateaus) []string {
+	var out list
+	out.say("A verdict holds for the luminosities and significances that were tested, and for this scenario alone.")
+	out.say("Significances are local: nothing corrects for a search at many masses.")
+	if p.z < 7 {
+		out.say("At infinite luminosity the systematic uncertainties leave a median Z of %.3g.", p.z)
+	}
+	out.simulation(engines)
+	out.always(r.Config)
+	return out
+}
+
 func (l *list) fewEvents(smallest, luminosity float64) {
 	const few = 10 // common practice, no source
 	if smallest < few {

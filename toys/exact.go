@@ -20,8 +20,8 @@ const (
 const (
 	limitReach = 6
 	limitStep  = 0.4
-	tailReach  = 4
-	tailStep   = 0.25
+	tailReach  = 3
+	tailStep   = 0.4
 )
 
 // exactly gives the answers at one luminosity by sums over all outcomes, where

@@ -27,13 +27,18 @@ type place struct{ block, toy int }
 
 func (s *jointSample) at(p place) *limitToy { return &s.blocks[p.block][p.toy] }
 
-// joint throws one sample.
+// joint throws one sample for limits, so many toys from each point.
 func (r *runner) joint(e *stats.Engine, luminosity float64, use purpose, nodes []float64, each int) (*jointSample, error) {
 	proposals := []proposal{r.at(e, 0, each)}
 	for _, mu := range nodes {
 		proposals = append(proposals, r.at(e, mu, each))
 	}
-	proposals = append(proposals, r.deficits(e, nodes, each)...)
+	return r.jointFrom(e, luminosity, use, nodes, append(proposals, r.deficits(e, nodes, each)...))
+}
+
+// jointFrom throws toys of proposals, the first of which are background only and
+// the nodes.
+func (r *runner) jointFrom(e *stats.Engine, luminosity float64, use purpose, nodes []float64, proposals []proposal) (*jointSample, error) {
 	m, err := r.newMixture(proposals)
 	if err != nil {
 		return nil, err

@@ -33,7 +33,7 @@ func precisely[T result](ctx context.Context, c Config, run func(*runner) (T, er
 	began := time.Now()
 	thrown := 0
 	done := func(why string) (T, error) {
-		best.note(fmt.Sprintf("%s: known to %.2g of itself or better; --toys %d gives the same again", why, best.worst(), thrown))
+		best.note(fmt.Sprintf("%s: all that has a number is known to %.2g of itself or better; --toys %d gives the same again", why, best.worst(), thrown))
 		return best, nil
 	}
 	for c.Toys = firstToys; ; {

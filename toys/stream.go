@@ -16,6 +16,7 @@ const (
 	pilotLimitToys
 	limitToys
 	exclusionToys
+	crosscheckToys
 	bootstrap // plus the purpose of the toys resampled
 )
 

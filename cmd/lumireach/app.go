@@ -75,7 +75,7 @@ func newApp(stdout, stderr io.Writer) *cli.App {
 		HideHelpCommand: true,
 		OnUsageError:    usage,
 		ExitErrHandler:  func(*cli.Context, error) {},
-		Commands:        []*cli.Command{reachCommand(), bandsCommand(), yieldsCommand()},
+		Commands:        []*cli.Command{reachCommand(), bandsCommand(), crosscheckCommand(), yieldsCommand()},
 	}
 	for _, c := range app.Commands {
 		c.OnUsageError = usage

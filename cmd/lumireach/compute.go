@@ -15,7 +15,7 @@ func reachCommand() *cli.Command {
 	return &cli.Command{
 		Name:  "reach",
 		Usage: "discovery and exclusion reach against luminosity, by formulas and by toys",
-		Flags: append(append(runFlags(), muFlag()), outputFlags("table, json or csv")...),
+		Flags: append(append(runFlags(defaultToys), muFlag()), outputFlags("table, json or csv")...),
 		Action: func(c *cli.Context) error {
 			return compute(c, toys.Reach, renderers[toys.ReachResult]{
 				table: report.ReachTable, json: report.ReachJSON, csv: report.ReachCSV,
@@ -28,7 +28,7 @@ func bandsCommand() *cli.Command {
 	return &cli.Command{
 		Name:  "bands",
 		Usage: "expected-limit bands on the signal strength against luminosity, by formulas and by toys",
-		Flags: append(runFlags(), outputFlags("table, json or csv")...),
+		Flags: append(runFlags(defaultToys), outputFlags("table, json or csv")...),
 		Action: func(c *cli.Context) error {
 			return compute(c, toys.Bands, renderers[toys.BandsResult]{
 				table: report.BandsTable, json: report.BandsJSON, csv: report.BandsCSV,
@@ -37,7 +37,7 @@ func bandsCommand() *cli.Command {
 	}
 }
 
-// renderers write one kind of result in the formats there are.
+// renderers write one kind of result in the formats there are; csv may be nil.
 type renderers[R any] struct {
 	table, json, csv func(io.Writer, report.Header, *R) error
 }
@@ -45,7 +45,13 @@ type renderers[R any] struct {
 // compute is the way of every command that throws toys: options and scenario,
 // one call of the library, the result in the format asked for.
 func compute[R any](c *cli.Context, run func(context.Context, stats.Search, toys.Config) (*R, error), render renderers[R]) error {
-	form, err := format(c, "table", "json", "csv")
+	write := map[string]func(io.Writer, report.Header, *R) error{"table": render.table, "json": render.json}
+	known := []string{"table", "json"}
+	if render.csv != nil {
+		write["csv"] = render.csv
+		known = append(known, "csv")
+	}
+	form, err := format(c, known...)
 	if err != nil {
 		return err
 	}
@@ -69,7 +75,6 @@ func compute[R any](c *cli.Context, run func(context.Context, stats.Search, toys
 		return err
 	}
 	return output(c, func(w io.Writer) error {
-		write := map[string]func(io.Writer, report.Header, *R) error{"table": render.table, "json": render.json, "csv": render.csv}[form]
-		return write(w, headerOf(c, s), result)
+		return write[form](w, headerOf(c, s), result)
 	})
 }

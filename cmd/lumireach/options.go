@@ -18,11 +18,16 @@ import (
 	"lumireach/toys"
 )
 
-// Options that commands share. Values are texts here, so that what is wrong with
+const (
+	defaultToys    = "5000"
+	fixedNuisances = string(toys.Fixed)
+)
+
+// Options that commands share; toys is how many by default. Values are texts here, so that what is wrong with
 // them is said in the program's own words.
-func runFlags() []cli.Flag {
+func runFlags(toys string) []cli.Flag {
 	return []cli.Flag{
-		&cli.StringFlag{Name: "toys", Value: "5000", Usage: "pseudo-experiments per luminosity and hypothesis; 0 for formulas only"},
+		&cli.StringFlag{Name: "toys", Value: toys, Usage: "pseudo-experiments per luminosity and hypothesis; 0 for formulas only"},
 		&cli.StringFlag{Name: "precision", Usage: "instead of --toys: throw until medians and goals are known to this fraction, such as 0.02"},
 		&cli.StringFlag{Name: "within", Usage: "most time that --precision may take, such as 60s; it reports what it reached"},
 		&cli.StringFlag{Name: "seed", Value: "1", Usage: "of all random numbers"},
@@ -32,7 +37,7 @@ func runFlags() []cli.Flag {
 		&cli.StringFlag{Name: "to", Usage: "last of --points luminosities"},
 		&cli.StringFlag{Name: "points", Usage: "how many luminosities between --from and --to"},
 		&cli.StringFlag{Name: "confidence", Value: "0.95", Usage: "of limits"},
-		&cli.StringFlag{Name: "nuisances", Value: string(toys.Fixed), Usage: "of toys: fixed, with auxiliary measurements that fluctuate, or drawn anew for every toy"},
+		&cli.StringFlag{Name: "nuisances", Value: fixedNuisances, Usage: "of toys: fixed, with auxiliary measurements that fluctuate, or drawn anew for every toy"},
 	}
 }
 

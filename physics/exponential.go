@@ -137,15 +137,13 @@ func (s unequalExponential) Fill(q, f, d1, d2 []float64) {
 	// being the mean and variance inside the bin. Positions count from low.
 	mean := 0.0
 	for i, v := range f {
-		m, _ := s.inside(i, slope)
-		d1[i] = m
-		mean += v * m
+		d1[i], d2[i] = s.inside(i, slope)
+		mean += v * d1[i]
 	}
 	variance := 0.0
 	for i, v := range f {
-		_, w := s.inside(i, slope)
 		x := d1[i] - mean
-		d2[i] = x*x + w
+		d2[i] += x * x
 		variance += v * d2[i]
 		d1[i] = v * x
 	}
@@ -173,9 +171,10 @@ func (s unequalExponential) inside(i int, slope float64) (mean, variance float64
 		m = 0.5 - t/12*(1-square/60*(1-square/42))
 		v = 1./12 - square/240*(1-square/25.2)
 	} else {
-		gone := math.Exp(-t)
-		m = 1/t - gone/(1-gone)
-		v = 1/(t*t) - gone/((1-gone)*(1-gone))
+		lost := -math.Expm1(-t)
+		ratio := (1 - lost) / lost
+		m = 1/t - ratio
+		v = 1/(t*t) - ratio/lost
 	}
 	if slope > 0 {
 		m = 1 - m

@@ -12,6 +12,12 @@ type kind struct {
 	quantities []quantity // in the order of Fill
 	fromFile   bool       // events come from a CSV file instead of make
 	make       func(binning) stats.Shape
+	// more are keys that nothing moves; readMore takes what they say into the form.
+	more     []string
+	readMore func(t table, b binning, form *Form)
+	makeFrom func(binning, Form) stats.Shape // in the place of make; may be nil
+	// coordinates divides the window as make, check and bounds see it. Nil: as it is.
+	coordinates func(binning, Form) binning
 	// check says what is wrong with which nominal quantity, or "". May be nil.
 	check func(b binning, at []float64) (key, what string)
 }
@@ -37,7 +43,7 @@ func (q quantity) local(value float64) float64 {
 	return value
 }
 
-var kinds = []kind{uniformKind, exponentialKind, gaussianKind, templateKind}
+var kinds = []kind{uniformKind, exponentialKind, gaussianKind, powerKind, bernsteinKind, templateKind}
 
 func kindNamed(name string) (kind, bool) {
 	for _, k := range kinds {
@@ -62,6 +68,14 @@ func (k kind) quantityNames() []string {
 		names[i] = q.key
 	}
 	return names
+}
+
+// in divides the window as the functions of the kind see it.
+func (k kind) in(b binning, form Form) binning {
+	if k.coordinates == nil {
+		return b
+	}
+	return k.coordinates(b, form)
 }
 
 // index is the place of a quantity in Fill, -1 if the kind has none of that name.

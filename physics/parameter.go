@@ -54,6 +54,10 @@ func (s *Scenario) parameters() []parameter {
 					out[j].actions = append(out[j].actions, action{channel: i, process: k, quantity: actsOnRate})
 					continue
 				}
+				if name == coefficientsKey {
+					out = append(out, p.freeShares(i, k, c.Name+" "+p.Name)...)
+					continue
+				}
 				full := c.Name + " " + p.Name + " " + name
 				free := freeRate(full, Free)
 				a := action{channel: i, process: k, quantity: actsOnRate}
@@ -91,8 +95,22 @@ func freeRate(name string, kind ParameterKind) parameter {
 
 func freeQuantity(name string, b binning, p *Process, quantity int) stats.Param {
 	k, _ := kindNamed(p.Form.Kind)
-	lower, upper, step := k.quantities[quantity].bounds(b, p.Form.Quantities[quantity].Value)
+	lower, upper, step := k.quantities[quantity].bounds(k.in(b, p.Form), p.Form.Quantities[quantity].Value)
 	return stats.Param{Name: name, Lower: lower, Upper: upper, Step: step}
+}
+
+// freeShares are the parameters of free coefficients.
+func (p *Process) freeShares(channel, process int, name string) []parameter {
+	s := p.shape.(bernstein)
+	out := make([]parameter, len(s.nominal))
+	for a := range out {
+		out[a] = parameter{
+			Param:   s.parameter(name, a),
+			kind:    Free,
+			actions: []action{{channel: channel, process: process, quantity: a, lin: 1}},
+		}
+	}
+	return out
 }
 
 // quantity is the place of a quantity in the form, actsOnRate for "rate".

@@ -99,7 +99,7 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 		return
 	}
 	t.name = "a shape of kind " + shown(name)
-	keys := append([]string{"kind"}, k.quantityNames()...)
+	keys := append(append([]string{"kind"}, k.quantityNames()...), k.more...)
 	if k.fromFile {
 		keys = append(keys, "file")
 	}
@@ -121,6 +121,11 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 		}
 		return
 	}
+	if k.readMore != nil {
+		if k.readMore(t, b, &p.Form); t.failed() {
+			return
+		}
+	}
 	at := make([]float64, len(k.quantities))
 	for a, q := range k.quantities {
 		if !t.has(q.key) {
@@ -137,12 +142,16 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 		p.Form.Quantities = append(p.Form.Quantities, Quantity{q.key, at[a]})
 	}
 	if k.check != nil {
-		if key, what := k.check(b, at); what != "" {
+		if key, what := k.check(k.in(b, p.Form), at); what != "" {
 			t.failKey(key, "%s", what)
 			return
 		}
 	}
-	p.shape = k.make(b)
+	if k.makeFrom != nil {
+		p.shape = k.makeFrom(b, p.Form)
+	} else {
+		p.shape = k.make(k.in(b, p.Form))
+	}
 	f := make([]float64, b.bins)
 	p.shape.Fill(p.nominal(), f, nil, nil)
 	if slices.ContainsFunc(f, math.IsNaN) {
@@ -152,8 +161,11 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 
 // nominal holds the quantities of a form in the units of its shape.
 func (p *Process) nominal() []float64 {
-	if s, moves := p.shape.(movingTemplate); moves {
+	switch s := p.shape.(type) {
+	case movingTemplate:
 		return make([]float64, len(s.moves))
+	case bernstein:
+		return slices.Clone(s.nominal)
 	}
 	k, _ := kindNamed(p.Form.Kind)
 	at := make([]float64, len(p.Form.Quantities))
@@ -167,6 +179,9 @@ func readFree(t table, c Channel, p *Process) {
 	if t.has("free") {
 		k, _ := kindNamed(p.Form.Kind)
 		allowed := append([]string{"rate"}, k.quantityNames()...)
+		if p.Form.Coefficients != nil {
+			allowed = append(allowed, coefficientsKey)
+		}
 		p.Free = t.texts("free", false)
 		for i, name := range p.Free {
 			path := joinIndex(join(t.path, "free"), i)
@@ -179,6 +194,10 @@ func readFree(t table, c Channel, p *Process) {
 				t.fail(path, "%q is listed twice", name)
 			case name != "rate" && c.Bins == 1:
 				t.fail(path, "one bin cannot measure the %s: leave it fixed, or take more bins", name)
+			case name == coefficientsKey && len(p.Form.Coefficients) == 1:
+				t.fail(path, "one coefficient is a uniform density with nothing to leave free: give more, or free the rate alone")
+			case name == coefficientsKey && c.Bins < len(p.Form.Coefficients):
+				t.fail(path, "%v bins cannot measure %v coefficients: leave them fixed, or take more bins", c.Bins, len(p.Form.Coefficients))
 			}
 		}
 	}

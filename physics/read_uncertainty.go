@@ -228,6 +228,10 @@ func (t table) checkMove(c *Channel, p *Process, moves string) {
 	if moves == movesTemplate && p.Form.Kind == templateKind.name {
 		return
 	}
+	if moves == coefficientsKey && p.Form.Coefficients != nil {
+		t.failKey("moves", "coefficients cannot be moved by an uncertainty: leave them free, or move the rate")
+		return
+	}
 	relative := true
 	if moves != "rate" {
 		k, _ := kindNamed(p.Form.Kind)
@@ -244,14 +248,14 @@ func (t table) checkMove(c *Channel, p *Process, moves string) {
 	}
 	switch {
 	case relative && t.has("shift"):
-		t.failKey("shift", "a %s is moved by size, which is relative, not by shift", moves)
+		t.failKey("shift", "the %s is moved by size, which is relative, not by shift", moves)
 	case !relative && t.has("size"):
-		t.failKey("size", "a %s is moved by shift, in its own unit, not by size", moves)
+		t.failKey("size", "the %s is moved by shift, in its own unit, not by size", moves)
 	case moves != "rate" && t.has("up"):
 		step := "shift"
 		if relative {
 			step = "size"
 		}
-		t.failKey("up", "a %s is moved by %s, not by up and down, which are for rates and templates", moves, step)
+		t.failKey("up", "the %s is moved by %s, not by up and down, which are for rates and templates", moves, step)
 	}
 }

@@ -59,13 +59,15 @@ type Process struct {
 
 // Form is the shape of a process over the window as the scenario gives it.
 type Form struct {
-	Kind       string // "" for a count without one
-	Quantities []Quantity
-	File       string // of a template, as given
+	Kind         string // "" for a count without one
+	Quantities   []Quantity
+	Origin       float64   // of a power, in the channel's unit
+	Coefficients []float64 // of a Bernstein polynomial, as given
+	File         string    // of a template, as given
 }
 
 // Quantity is a number that a form depends on, in the channel's unit: a mean, a
-// width, a slope (per unit).
+// width, a slope (per unit), an exponent.
 type Quantity struct {
 	Name  string
 	Value float64

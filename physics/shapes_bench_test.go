@@ -16,6 +16,8 @@ func BenchmarkFill(b *testing.B) {
 	}{
 		{"gaussian", gaussianKind.make(window), []float64{126, math.Log(1.6)}},
 		{"exponential", exponentialKind.make(window), []float64{-0.03}},
+		{"power", newPower(window, 0), []float64{-5.5}},
+		{"bernstein of 4", newBernstein(window, []float64{4, 3, 2, 1}), []float64{0.3, 0.3, 0.1}},
 	} {
 		f := make([]float64, window.bins)
 		n := len(bench.q)

@@ -120,10 +120,16 @@ func (s *Scenario) acts(q parameter, a action, scale float64) Acts {
 	p := &c.Processes[a.process]
 	words := Acts{Channel: c.Name, Process: p.Name, Moves: "rate"}
 	relative, dimension := true, 0
-	if shape, moves := p.shape.(movingTemplate); moves && a.quantity != actsOnRate {
-		words.Moves = movesTemplate
-		words.Size = shape.sizes(a.quantity, scale)
-		return words
+	if a.quantity != actsOnRate {
+		switch shape := p.shape.(type) {
+		case movingTemplate:
+			words.Moves = movesTemplate
+			words.Size = shape.sizes(a.quantity, scale)
+			return words
+		case bernstein:
+			words.Moves = coefficientsKey
+			return words
+		}
 	}
 	if a.quantity != actsOnRate {
 		k, _ := kindNamed(p.Form.Kind)

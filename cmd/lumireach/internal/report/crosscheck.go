@@ -55,7 +55,7 @@ func reasonsOf(r *toys.CrosscheckResult) []string {
 		if last[kind] != first[kind] {
 			where += " to " + luminosity(last[kind])
 		}
-		out = append(out, kind+" "+where+": "+texts[kind])
+		out = append(out, where+": "+kind+": "+texts[kind])
 	}
 	return out
 }

@@ -74,3 +74,8 @@ func TestYieldsGolden(t *testing.T) {
 	golden(t, "yields.txt", func(b *bytes.Buffer) error { return YieldsTable(b, header("yields"), y) })
 	golden(t, "yields.json", func(b *bytes.Buffer) error { return YieldsJSON(b, header("yields"), y) })
 }
+
+func TestCrosscheckGolden(t *testing.T) {
+	golden(t, "crosscheck.txt", func(b *bytes.Buffer) error { return CrosscheckTable(b, header("crosscheck"), crosschecked()) })
+	golden(t, "crosscheck.json", func(b *bytes.Buffer) error { return CrosscheckJSON(b, header("crosscheck"), crosschecked()) })
+}

@@ -3,7 +3,7 @@ package report
 import (
 	"io"
 	"strings"
-	"unicode/utf8"
+	"unicode"
 )
 
 // grid is a table of right-aligned cells, but for the first columns of words.
@@ -32,14 +32,14 @@ func (g *grid) write(w io.Writer) error {
 				widths = append(widths, 0)
 			}
 			if cell != across && !(k+1 < len(line) && line[k+1] == across) {
-				widths[k] = max(widths[k], utf8.RuneCountInString(cell))
+				widths[k] = max(widths[k], columns(cell))
 			}
 		}
 	}
 	for _, line := range g.lines { // a text across columns fits them
 		for k, cell := range line {
 			if n := spanned(line, k); n > 1 && cell != across {
-				lack := utf8.RuneCountInString(cell) - g.span(widths, k, n)
+				lack := columns(cell) - g.span(widths, k, n)
 				widths[k+n-1] += max(0, lack)
 			}
 		}
@@ -60,7 +60,7 @@ func (g *grid) write(w io.Writer) error {
 			}
 			row.WriteString(strings.Repeat(" ", g.gap(k)))
 			n := spanned(line, k)
-			space := max(0, g.span(widths, k, n)-utf8.RuneCountInString(cell))
+			space := max(0, g.span(widths, k, n)-columns(cell))
 			left := space
 			switch {
 			case n > 1:
@@ -104,19 +104,30 @@ func (g *grid) gap(k int) int {
 	return 3
 }
 
+// columns is how wide a text stands: combining marks, as in q̃, take no room.
+func columns(s string) int {
+	n := 0
+	for _, r := range s {
+		if !unicode.Is(unicode.Mn, r) {
+			n++
+		}
+	}
+	return n
+}
+
 // paragraphs wraps notes at a width, each with a mark before it.
 func paragraphs(notes []string, mark string, width int) string {
 	var b strings.Builder
 	for _, note := range notes {
-		indent := strings.Repeat(" ", utf8.RuneCountInString(mark))
+		indent := strings.Repeat(" ", columns(mark))
 		line := mark
-		used := utf8.RuneCountInString(mark)
+		used := columns(mark)
 		first := true
 		for _, word := range strings.Fields(note) {
-			length := utf8.RuneCountInString(word)
+			length := columns(word)
 			if !first && used+1+length > width {
 				b.WriteString(line + "\n")
-				line, used, first = indent, utf8.RuneCountInString(indent), true
+				line, used, first = indent, columns(indent), true
 			}
 			if !first {
 				line += " "

@@ -142,6 +142,8 @@ var reasons = map[string]string{
 	"chance_5": "chance_why", "chance_5_error": "chance_why", "mu_up": "why", "mu_up_error": "why",
 	"luminosity": "why", "error": "why", "luminosity_80": "why_80", "error_80": "why_80",
 	"luminosity_90": "why_90", "error_90": "why_90",
+	"first": "why", "always_after": "why", "first_80": "why_80", "always_after_80": "why_80",
+	"first_90": "why_90", "always_after_90": "why_90",
 }
 
 // checkNulls finds nulls, alone or in a band, and asks for the reason beside.
@@ -181,7 +183,7 @@ func checkNulls(t *testing.T, path string, v any) (nulls int) {
 }
 
 func TestNullHasWhy(t *testing.T) {
-	want := map[string]int{"full": 0, "formulas": 3, "gaps": 29}
+	want := map[string]int{"full": 0, "exact": 6, "formulas": 3, "gaps": 29}
 	for name, r := range reaches() {
 		if got := checkNulls(t, name, decodeReach(t, r)); got != want[name] {
 			t.Errorf("%s has %d fields with a null, want %d", name, got, want[name])

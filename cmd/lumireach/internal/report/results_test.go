@@ -24,7 +24,7 @@ func header(command string) Header {
 }
 
 func reaches() map[string]*toys.ReachResult {
-	return map[string]*toys.ReachResult{"full": fullReach(), "gaps": reachWithGaps(), "formulas": formulasOnly()}
+	return map[string]*toys.ReachResult{"full": fullReach(), "exact": exactReach(), "gaps": reachWithGaps(), "formulas": formulasOnly()}
 }
 
 var notes = []string{"precision 0.02 asked for, 0.017 reached with 6400 toys; the median limit at luminosity 300 was the last to settle, after four rounds"}
@@ -208,5 +208,59 @@ func expectedYields() physics.Yields {
 				{Channel: "singles", Process: "chance", Moves: "rate", Size: "+21 %", Up: 1.21, Down: 1 / 1.21}}},
 			{Name: "idle", Kind: physics.Constrained},
 		},
+	}
+}
+
+// exactReach has a third column.
+func exactReach() *toys.ReachResult {
+	r := fullReach()
+	for i := range r.Points {
+		a := toys.ExactAnswer{Answer: toys.Answer{
+			Discovery: toys.Discovery{Z: toys.Band{Minus1: 1.03, Median: 2.0512345, Plus1: 3.1, Plus2: 4.02}, ZAtLeast: none(), Chance3: 0.17012, Chance5: 0.0024, ChanceOne: nan},
+			Exclusion: toys.Exclusion{MuUp: toys.Band{Minus2: 0.461234, Minus1: 0.6125, Median: 0.84567, Plus1: 1.2034, Plus2: 1.7098}, MuUpOther: none()},
+		}, Coverage: 0.9612}
+		r.Points[i].Exact = &a
+	}
+	for k, values := range [][2]float64{{66.04, 67.812}, {1860, 1860}, {nan, nan}} {
+		g := &toys.ExactGoal{}
+		for i := range g.First {
+			g.First[i], g.AlwaysAfter[i] = values[0]*float64(i+1), values[1]*float64(i+1)
+			if k == 2 {
+				g.Why[i] = "more outcomes matter than can be summed"
+			}
+		}
+		r.Goals[k].Exact = g
+	}
+	return r
+}
+
+// crosschecked has every verdict.
+func crosschecked() *toys.CrosscheckResult {
+	tolerances := toys.Tolerances{Relative: 0.05, Z: 0.1, Chance: 0.02}
+	median := toys.Comparison{Quantity: "median Z", Group: toys.Discovering, Kind: toys.Significances, Luminosity: 30,
+		Formula: 2.05, Toys: 2.061, Error: 0.012, Exact: nan, Difference: 0.011, DError: 0.012, Tolerance: 0.1, Verdict: toys.Good}
+	tail := toys.Comparison{Quantity: "significance of q0 = 25", Group: toys.Discovering, Kind: toys.Significances, Luminosity: 30,
+		Formula: 5, Toys: nan, Error: nan, Exact: nan, Difference: nan, DError: nan, Tolerance: 0.1, Verdict: toys.Untested, Why: "too few toys share that tail"}
+	chance := toys.Comparison{Quantity: "chance of 3σ", Group: toys.Discovering, Kind: toys.Chances, Luminosity: 30,
+		Formula: 0.17, Toys: 0.189, Error: 0.0041, Exact: nan, Difference: 0.019, DError: 0.0041, Tolerance: 0.02, Verdict: toys.Undecided, MoreToys: 12345}
+	limit := toys.Comparison{Quantity: "−2σ limit on μ", Group: toys.Excluding, Kind: toys.Ratios, Luminosity: 30,
+		Formula: 0.41, Toys: 0.46, Error: 0.004, Exact: 0.4612, Difference: 0.111, DError: 0, Tolerance: 0.05, Verdict: toys.Off}
+	tilde := toys.Comparison{Quantity: "P(q̃ ≥ its median) without signal", Group: toys.Excluding, Kind: toys.Chances, Luminosity: 30,
+		Formula: 0.5, Toys: 0.561, Error: 0.007, Exact: nan, Difference: 0.061, DError: 0.007, Tolerance: 0.02, Verdict: toys.Off}
+	goal := toys.Comparison{Quantity: "discovery, 5σ, by 50 % of experiments", Group: toys.Discovering, Kind: toys.Ratios, Luminosity: nan,
+		Formula: 1802, Toys: 1881, Error: 41.2, Exact: nan, Difference: 0.042, DError: 0.022, Tolerance: 0.05, Verdict: toys.Undecided, MoreToys: 900}
+	return &toys.CrosscheckResult{
+		Config:     toys.Config{Luminosities: []float64{30, 300}, Toys: 10000, Seed: 7, Mu: 1, Confidence: 0.95, Nuisances: toys.Fixed},
+		Tolerances: tolerances,
+		Points: []toys.CrosscheckPoint{
+			{Luminosity: 30, Comparisons: []toys.Comparison{tail, median, chance, limit, tilde}, Reasons: []string{"few events: the smallest expected count that the signal reaches is 0.4"}},
+			{Luminosity: 300, Comparisons: []toys.Comparison{median}, Reasons: []string{"few events: the smallest expected count that the signal reaches is 4", "discrete outcomes: the median one alone has a probability of 0.1"}},
+		},
+		Goals: []toys.Comparison{goal},
+		Distributions: []toys.Distribution{{Statistic: "q0", Hypothesis: "background only", Luminosity: 30,
+			Edges: []float64{0, 0.25, 0.5}, Probability: []float64{0.6, 0.4}, Error: []float64{0.01, 0.008}, Formula: []float64{0.599, 0.401}}},
+		From:    map[toys.Group]float64{toys.Discovering: 300, toys.Excluding: nan},
+		FromWhy: map[toys.Group]string{toys.Excluding: "−2σ limit on μ at 30: off by 11 %"},
+		Notes:   notes, Cautions: cautions,
 	}
 }

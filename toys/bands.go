@@ -30,7 +30,7 @@ func bands(r *runner, search stats.Search) (*BandsResult, error) {
 			r.progress.Total += r.plannedLimits(e, result.Points[i].Formula.MuUp)
 		}
 	}
-	if notEnumerable(engines[0], c.Nuisances) == "" {
+	if enumerable(engines[0], c) {
 		err := r.share(len(engines), func() func(int) {
 			return func(i int) {
 				x := exactExclusion(engines[i], c.Confidence, result.Points[i].Formula.MuUp)

@@ -28,6 +28,8 @@ type Config struct {
 	Within time.Duration
 	// Nuisances says what toys do with nuisance parameters. Empty means Fixed.
 	Nuisances Nuisances
+	// WithoutExact leaves out the exact sums of searches that have them.
+	WithoutExact bool
 	// Progress, where not nil, is told how much of the work is done. It is
 	// called from one goroutine at a time.
 	Progress func(Progress)

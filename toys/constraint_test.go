@@ -94,7 +94,7 @@ bins = 20
   shape = { kind = "gaussian", mean = 5.1, width = 0.9 }
   free = ["rate", "mean", "width"]
 `)
-	r, err := Reach(context.Background(), search, Config{Luminosities: []float64{10}, Toys: 200, Seed: 1})
+	r, err := Reach(context.Background(), search, Config{WithoutExact: true, Luminosities: []float64{10}, Toys: 200, Seed: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -123,7 +123,7 @@ bins = 5
   shape = { kind = "uniform" }
   free = ["rate"]
 `)
-	r, err := Reach(context.Background(), same, Config{Luminosities: []float64{10}})
+	r, err := Reach(context.Background(), same, Config{WithoutExact: true, Luminosities: []float64{10}})
 	if err != nil {
 		t.Fatal(err)
 	}

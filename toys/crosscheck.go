@@ -65,7 +65,7 @@ func crosscheck(r *runner, search stats.Search, t Tolerances, exactToo bool) (*C
 		return nil, err
 	}
 	r.progress.Total += r.plannedGoals(goals)
-	exactToo = exactToo && notEnumerable(engines[0], c.Nuisances) == ""
+	exactToo = exactToo && enumerable(engines[0], c)
 	if exactToo {
 		if err := r.exactGoals(search, goals); err != nil {
 			return nil, err

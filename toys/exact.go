@@ -25,7 +25,7 @@ const (
 )
 
 // exactly gives the answers at one luminosity by sums over all outcomes, where
-// they can be enumerated; notEnumerable is to be asked before.
+// they can be enumerated; enumerable is to be asked before.
 func exactly(e *stats.Engine, c Config, formula Answer) ExactAnswer {
 	var a ExactAnswer
 	var err error

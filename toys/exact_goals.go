@@ -215,6 +215,9 @@ func (r *runner) exactLattice(search stats.Search, g *Goal, low, high float64) (
 		}
 		return errors.Join(append(failures, err)...)
 	}
+	if err := latticeCost(search, at(float64(n/2))); err != nil {
+		return func(float64) (float64, float64, error) { return math.NaN(), math.NaN(), err }, nil
+	}
 	return func(fraction float64) (first, always float64, err error) {
 		first, always = math.NaN(), math.NaN()
 		below, above := 0, n-1
@@ -254,6 +257,23 @@ func (r *runner) exactLattice(search stats.Search, g *Goal, low, high float64) (
 		}
 		return first, always, nil
 	}, nil
+}
+
+// latticeCost refuses what would take longer than toys.
+func latticeCost(search stats.Search, luminosity float64) error {
+	const most = 20000 // outcomes times auxiliary values
+	e, err := search.Engine(luminosity)
+	if err != nil {
+		return err
+	}
+	o, err := newOutcomes(e, []float64{0, 1}, leastLimit, limitReach, limitStep)
+	if err != nil {
+		return err
+	}
+	if n := len(o.counts) * len(o.a); n > most {
+		return fmt.Errorf("exact goals are left out where more than %d outcomes matter", most)
+	}
+	return nil
 }
 
 // exactChance is the fraction of experiments that reach a goal.

@@ -25,19 +25,10 @@ type outcomes struct {
 // mostOutcomes are what is enumerated at most, rows times auxiliary values.
 const mostOutcomes = 1_000_000
 
-// notEnumerable says why a search has no exact answers, or "".
-func notEnumerable(e *stats.Engine, ensemble Nuisances) string {
-	switch {
-	case ensemble == Drawn:
-		return "exact sums are of experiments with fixed nuisance parameters"
-	case e.Bins() > 2:
-		return fmt.Sprintf("exact sums are for one or two counts, and this search has %d bins", e.Bins())
-	case e.Factors() > 0:
-		return "exact sums are not for simulated templates"
-	case e.Auxiliary() > 1:
-		return fmt.Sprintf("exact sums are for at most one uncertainty, and %d act here in different ways", e.Auxiliary())
-	}
-	return ""
+// enumerable tells whether a search has exact answers: one or two counts with at
+// most one uncertainty, in experiments with fixed nuisance parameters.
+func enumerable(e *stats.Engine, c Config) bool {
+	return !c.WithoutExact && c.Nuisances == Fixed && e.Bins() <= 2 && e.Factors() == 0 && e.Auxiliary() <= 1
 }
 
 // newOutcomes enumerates the counts of probability above least under any of the

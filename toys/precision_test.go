@@ -10,7 +10,7 @@ import (
 // A run by precision reaches it, and says with how many toys the same comes
 // again.
 func TestPrecision(t *testing.T) {
-	config := Config{Luminosities: []float64{3}, Seed: 61, Precision: 0.03}
+	config := Config{WithoutExact: true, Luminosities: []float64{3}, Seed: 61, Precision: 0.03}
 	r, err := Reach(context.Background(), onOff(10, 20, 2), config)
 	if err != nil {
 		t.Fatal(err)
@@ -21,7 +21,7 @@ func TestPrecision(t *testing.T) {
 	if len(r.Notes) != 1 || !strings.Contains(r.Notes[0], "--toys ") {
 		t.Errorf("notes are %q, want one that names the toys", r.Notes)
 	}
-	again, err := Reach(context.Background(), onOff(10, 20, 2), Config{Luminosities: []float64{3}, Seed: 61, Toys: r.Config.Toys})
+	again, err := Reach(context.Background(), onOff(10, 20, 2), Config{WithoutExact: true, Luminosities: []float64{3}, Seed: 61, Toys: r.Config.Toys})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -38,7 +38,7 @@ func TestWithin(t *testing.T) {
 	if _, err := Reach(context.Background(), search, config); err == nil || !strings.Contains(err.Error(), "too short") {
 		t.Errorf("a time for nothing gives %v", err)
 	}
-	count := Config{Luminosities: []float64{3}, Seed: 67, Precision: 1e-4, Within: 3 * time.Second}
+	count := Config{WithoutExact: true, Luminosities: []float64{3}, Seed: 67, Precision: 1e-4, Within: 3 * time.Second}
 	r, err := Bands(context.Background(), onOff(10, 20, 2), count)
 	if err != nil {
 		t.Fatal(err)

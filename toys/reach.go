@@ -78,7 +78,7 @@ func reach(r *runner, search stats.Search) (*ReachResult, error) {
 		return nil, err
 	}
 	result.Goals = goals
-	if notEnumerable(engines[0], c.Nuisances) == "" {
+	if enumerable(engines[0], c) {
 		if err := r.exactPoints(engines, result.Points); err != nil {
 			return nil, err
 		}

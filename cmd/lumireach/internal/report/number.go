@@ -73,10 +73,16 @@ func percent(p float64) string {
 	return fixed(100*p, 1) + " %"
 }
 
-// measuredPercent is measured for a probability.
+// measuredPercent is measured for a probability, whose error is half of an
+// interval: where no toy passed, or all did, only its other end is known.
 func measuredPercent(p, err float64) string {
-	if math.IsNaN(p) {
+	switch {
+	case math.IsNaN(p):
 		return dash
+	case p == 0 && err > 0:
+		return "< " + plain(100*2*err, 2) + " %"
+	case p == 1 && err > 0:
+		return "> " + fixed(100*(1-2*err), max(1, 1-int(math.Floor(math.Log10(200*err))))) + " %"
 	}
 	return measured(100*p, 100*err) + " %"
 }

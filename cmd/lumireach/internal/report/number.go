@@ -82,7 +82,9 @@ func measuredPercent(p, err float64) string {
 	case p == 0 && err > 0:
 		return "< " + plain(100*2*err, 2) + " %"
 	case p == 1 && err > 0:
-		return "> " + fixed(100*(1-2*err), max(1, 1-int(math.Floor(math.Log10(200*err))))) + " %"
+		places := max(1, -int(math.Floor(math.Log10(200*err))))
+		unit := math.Pow(10, float64(places))
+		return "> " + fixed(math.Floor(100*(1-2*err)*unit)/unit, places) + " %"
 	}
 	return measured(100*p, 100*err) + " %"
 }

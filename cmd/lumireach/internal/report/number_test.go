@@ -105,7 +105,7 @@ func TestPercent(t *testing.T) {
 		{0.1702, 0.0053, "17.02 ± 0.53 %"},
 		{0, 0.00046, "< 0.092 %"},
 		{1, 0.00018, "> 99.96 %"},
-		{1, 0.0046, "> 99.1 %"},
+		{1, 0.0046, "> 99.0 %"},
 		{nan, nan, dash},
 	} {
 		if got := measuredPercent(tt.p, tt.err); got != tt.want {

@@ -292,3 +292,36 @@ func BenchmarkFit(b *testing.B) {
 		i++
 	}
 }
+
+// A background without events that a bent rate beside it replaces sinks to its
+// bound: Fisher scoring alone only creeps there.
+func TestSinkingRate(t *testing.T) {
+	k := math.Sqrt(0.09 + 0.91*5/2)
+	m := Model{
+		Params: []Param{{Name: "wall", Nominal: 1, Upper: math.Inf(1), Step: 0.1}, uncertainty("bent"), uncertainty("common")},
+		Channels: []Channel{
+			{Bins: 1, Processes: []Process{
+				{Yield: 1.92, Signal: true, Factor: -1, Rate: []Effect{{Param: 2, Lin: math.Log(1.12)}}},
+				{Yield: 0.36, Factor: -1, Rate: []Effect{
+					{Param: 1, Lin: k * math.Log(1.35/0.8) / 2, Bend: math.Log(1.35*0.8) / 2, Scale: k},
+					{Param: 2, Lin: math.Log(1.12)},
+				}},
+				{Yield: 0.2, Factor: 0},
+			}},
+			{Bins: 1, Processes: []Process{{Yield: 1.4, Factor: 0}}},
+		},
+	}
+	f := prepare(t, m).Fitter()
+	failed := 0
+	for i := range 100 {
+		for j := range 20 {
+			d := &Data{N: []float64{7, 0}, A: []float64{-2 + 0.04*float64(i), -1 + 0.1*float64(j)}}
+			if fit := f.AtFresh(d, 0); fit.Status != Converged {
+				failed++
+			}
+		}
+	}
+	if failed > 2 {
+		t.Errorf("%d of 2000 fits of seven events beside an empty control region failed", failed)
+	}
+}

@@ -33,6 +33,9 @@ func (f *Fitter) minimise(d *Data, minMu, maxMu float64, background bool) Fit {
 			if slope, bent, ok = f.newton(minMu, maxMu); !ok {
 				slope, bent = f.damped(minMu, maxMu)
 			}
+			if gain := f.fall(); gain < 0 {
+				slope, bent = slope+gain, true
+			}
 		}
 		if -slope < decrementGoal && !bent {
 			value := f.valueHere(f.x, d)
@@ -60,6 +63,25 @@ func (f *Fitter) minimise(d *Data, minMu, maxMu float64, background bool) Fit {
 		slope, bent, ok = f.newton(minMu, maxMu)
 	}
 	return Fit{Deviance: 2 * f.value(f.x, d, background), Mu: f.x[0], Status: Failed}
+}
+
+// fall sends free rates that sink, and are already small, to nothing at once:
+// where a bin without events loses its last background, the expected information
+// grows without bound and Fisher scoring only creeps there. It returns what that
+// adds to the slope along the step.
+func (f *Fitter) fall() (gain float64) {
+	for _, v := range f.variables {
+		if v == 0 {
+			continue
+		}
+		p := &f.engine.params[v-1]
+		to := p.Lower - f.x[v]
+		if p.Lower == 0 && f.gradient[v] > 0 && -to < p.Step && to < f.step[v] {
+			gain += f.gradient[v] * (to - f.step[v])
+			f.step[v] = to
+		}
+	}
+	return gain
 }
 
 // contraction is how much the Newton decrement must fall for a step to be

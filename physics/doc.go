@@ -12,8 +12,8 @@
 // behind: unknown keys, values of the wrong kind, names that do not exist,
 // peaks that miss their window, backgrounds that vanish by underflow in a bin
 // where signal can fall. Counting channels and mass windows of equal bins are
-// understood, with the shapes uniform, exponential, gaussian, power,
-// bernstein and template.
+// understood, with the shapes uniform, exponential, gaussian, power, bernstein,
+// crystal-ball, voigt and template.
 //
 // The caller watches the units: a luminosity is in the unit of its scenario,
 // rates are selected events per unit luminosity in the channel's window, and

@@ -2,6 +2,7 @@ package physics
 
 import (
 	"math"
+	"slices"
 
 	"lumireach/stats"
 )
@@ -19,6 +20,7 @@ type kind struct {
 	// coordinates divides the window as make, check and bounds see it. Nil: as it is.
 	coordinates func(binning, Form) binning
 	// check says what is wrong with which nominal quantity, or "". May be nil.
+	// Quantities that the form lacks are NaN.
 	check func(b binning, at []float64) (key, what string)
 }
 
@@ -30,6 +32,9 @@ type quantity struct {
 	relative bool
 	// dimension is the power of the window's unit that it carries.
 	dimension int
+	// partner names the quantity without which this one may be left out; "" for
+	// one that no form lacks.
+	partner string
 	// bounds limits a free quantity, as offsets from its nominal value in the
 	// units of Fill.
 	bounds func(b binning, at float64) (lower, upper, step float64)
@@ -43,7 +48,7 @@ func (q quantity) local(value float64) float64 {
 	return value
 }
 
-var kinds = []kind{uniformKind, exponentialKind, gaussianKind, powerKind, bernsteinKind, templateKind}
+var kinds = []kind{uniformKind, exponentialKind, gaussianKind, powerKind, bernsteinKind, crystalBallKind, voigtKind, templateKind}
 
 func kindNamed(name string) (kind, bool) {
 	for _, k := range kinds {
@@ -52,6 +57,27 @@ func kindNamed(name string) (kind, bool) {
 		}
 	}
 	return kind{}, false
+}
+
+// kind is the form's kind, with those quantities alone that the form has.
+func (f Form) kind() kind {
+	k, _ := kindNamed(f.Kind)
+	if len(f.Quantities) == len(k.quantities) {
+		return k
+	}
+	var given []quantity
+	for _, q := range k.quantities {
+		if f.has(q.key) {
+			given = append(given, q)
+		}
+	}
+	k.quantities = given
+	return k
+}
+
+// has tells whether a form has a quantity of that name.
+func (f Form) has(key string) bool {
+	return slices.ContainsFunc(f.Quantities, func(q Quantity) bool { return q.Name == key })
 }
 
 func kindNames() []string {

@@ -94,7 +94,7 @@ func freeRate(name string, kind ParameterKind) parameter {
 }
 
 func freeQuantity(name string, b binning, p *Process, quantity int) stats.Param {
-	k, _ := kindNamed(p.Form.Kind)
+	k := p.Form.kind()
 	lower, upper, step := k.quantities[quantity].bounds(k.in(b, p.Form), p.Form.Quantities[quantity].Value)
 	return stats.Param{Name: name, Lower: lower, Upper: upper, Step: step}
 }
@@ -118,7 +118,7 @@ func (p *Process) quantity(name string) int {
 	if name == "rate" {
 		return actsOnRate
 	}
-	k, _ := kindNamed(p.Form.Kind)
+	k := p.Form.kind()
 	a := k.index(name)
 	if a < 0 {
 		panic("physics: a quantity that the form lacks")

@@ -129,6 +129,14 @@ func (s *Scenario) readForm(t table, c Channel, p *Process) {
 	at := make([]float64, len(k.quantities))
 	for a, q := range k.quantities {
 		if !t.has(q.key) {
+			if q.partner != "" && !t.has(q.partner) {
+				at[a] = math.NaN()
+				continue
+			}
+			if q.partner != "" {
+				t.failKey(q.partner, "%s stands without %s: give both, or neither", q.partner, q.key)
+				return
+			}
 			t.missing(q.key, q.key+" = a number")
 			return
 		}
@@ -167,7 +175,7 @@ func (p *Process) nominal() []float64 {
 	case bernstein:
 		return slices.Clone(s.nominal)
 	}
-	k, _ := kindNamed(p.Form.Kind)
+	k := p.Form.kind()
 	at := make([]float64, len(p.Form.Quantities))
 	for a, q := range p.Form.Quantities {
 		at[a] = k.quantities[a].local(q.Value)
@@ -177,7 +185,7 @@ func (p *Process) nominal() []float64 {
 
 func readFree(t table, c Channel, p *Process) {
 	if t.has("free") {
-		k, _ := kindNamed(p.Form.Kind)
+		k := p.Form.kind()
 		allowed := append([]string{"rate"}, k.quantityNames()...)
 		if p.Form.Coefficients != nil {
 			allowed = append(allowed, coefficientsKey)

@@ -234,7 +234,7 @@ func (t table) checkMove(c *Channel, p *Process, moves string) {
 	}
 	relative := true
 	if moves != "rate" {
-		k, _ := kindNamed(p.Form.Kind)
+		k := p.Form.kind()
 		a := k.index(moves)
 		if a < 0 {
 			allowed := append([]string{"rate"}, k.quantityNames()...)

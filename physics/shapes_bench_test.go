@@ -9,6 +9,8 @@ import (
 
 func BenchmarkFill(b *testing.B) {
 	window := equalBins(100, 160, 60)
+	tails, both := tailed{126, 1.6, 1.4, 4, 1.9, 9}.shape(window)
+	low, one := tailed{126, 1.6, 1.4, 4, 0, 0}.shape(window)
 	for _, bench := range []struct {
 		name  string
 		shape stats.Shape
@@ -18,6 +20,9 @@ func BenchmarkFill(b *testing.B) {
 		{"exponential", exponentialKind.make(window), []float64{-0.03}},
 		{"power", newPower(window, 0), []float64{-5.5}},
 		{"bernstein of 4", newBernstein(window, []float64{4, 3, 2, 1}), []float64{0.3, 0.3, 0.1}},
+		{"crystal-ball of one tail", low, one},
+		{"crystal-ball of two tails", tails, both},
+		{"voigt", voigtKind.make(window), []float64{126, math.Log(1.6), math.Log(2.4)}},
 	} {
 		f := make([]float64, window.bins)
 		n := len(bench.q)

@@ -344,6 +344,20 @@ func TestUndefinedShapes(t *testing.T) {
 		{"width not a number", gaussianKind.make(b), []float64{126, math.NaN()}},
 		{"infinite width", gaussianKind.make(b), []float64{126, math.Inf(1)}},
 		{"no width", gaussianKind.make(b), []float64{126, math.Inf(-1)}},
+		{"power of 1", newCrystalBall(b, true, false), []float64{126, 0, 0, 0}},
+		{"power below 1", newCrystalBall(b, true, true), []float64{126, 0, 0, 1, 0, -0.1}},
+		{"power not a number", newCrystalBall(b, true, false), []float64{126, 0, 0, math.NaN()}},
+		{"infinite power", newCrystalBall(b, true, false), []float64{126, 0, 0, math.Inf(1)}},
+		{"alpha not a number", newCrystalBall(b, false, true), []float64{126, 0, math.NaN(), 1}},
+		{"infinite alpha", newCrystalBall(b, false, true), []float64{126, 0, math.Inf(1), 1}},
+		{"no alpha", newCrystalBall(b, false, true), []float64{126, 0, math.Inf(-1), 1}},
+		{"side without a tail far away", newCrystalBall(b, false, true), []float64{400, 0, 0, 1}},
+		{"tail of no width", newCrystalBall(b, true, false), []float64{126, math.Inf(-1), 0, 1}},
+		{"voigt of mean not a number", voigtKind.make(b), []float64{math.NaN(), 0, 0}},
+		{"voigt of no width", voigtKind.make(b), []float64{126, math.Inf(-1), 0}},
+		{"no natural width", voigtKind.make(b), []float64{126, 0, math.Inf(-1)}},
+		{"infinite natural width", voigtKind.make(b), []float64{126, 0, math.Inf(1)}},
+		{"natural width not a number", voigtKind.make(b), []float64{126, 0, math.NaN()}},
 		{"slope not a number", exponentialKind.make(b), []float64{math.NaN()}},
 		{"infinite slope", exponentialKind.make(b), []float64{math.Inf(-1)}},
 	} {
@@ -365,8 +379,8 @@ func TestUndefinedShapes(t *testing.T) {
 func TestFillDoesNotAllocate(t *testing.T) {
 	b := equalBins(100, 160, 60)
 	f := make([]float64, b.bins)
-	d1 := make([]float64, 2*b.bins)
-	d2 := make([]float64, 3*b.bins)
+	d1 := make([]float64, 6*b.bins)
+	d2 := make([]float64, 21*b.bins)
 	for _, tt := range []struct {
 		name  string
 		shape stats.Shape
@@ -375,10 +389,13 @@ func TestFillDoesNotAllocate(t *testing.T) {
 		{"gaussian", gaussianKind.make(b), []float64{126, 0.5}},
 		{"wide gaussian", gaussianKind.make(b), []float64{126, 10}},
 		{"exponential", exponentialKind.make(b), []float64{-0.03}},
+		{"crystal-ball", newCrystalBall(b, true, true), []float64{126, 0.5, 0.3, 1, 0.2, 2}},
+		{"wide crystal-ball", newCrystalBall(b, true, true), []float64{126, 10, 0.3, 1, 0.2, 2}},
+		{"voigt", voigtKind.make(b), []float64{126, 0.5, 0.3}},
 		{"uniform", uniformKind.make(b), nil},
 		{"template", newTemplate(firstBinOnly(b.bins)), nil},
 	} {
-		if n := testing.AllocsPerRun(100, func() { tt.shape.Fill(tt.q, f, d1[:len(tt.q)*b.bins], d2) }); n != 0 {
+		if n := testing.AllocsPerRun(100, func() { tt.shape.Fill(tt.q, f, d1[:len(tt.q)*b.bins], d2[:len(tt.q)*(len(tt.q)+1)/2*b.bins]) }); n != 0 {
 			t.Errorf("%v: Fill allocates %v times, want 0", tt.name, n)
 		}
 	}
@@ -392,14 +409,15 @@ func firstBinOnly(bins int) []float64 {
 
 func TestFillWrongBinsPanics(t *testing.T) {
 	b := equalBins(100, 160, 60)
-	for _, shape := range []stats.Shape{gaussianKind.make(b), exponentialKind.make(b), uniformKind.make(b), newTemplate(firstBinOnly(60))} {
+	for _, shape := range []stats.Shape{gaussianKind.make(b), exponentialKind.make(b), uniformKind.make(b), newTemplate(firstBinOnly(60)),
+		newCrystalBall(b, false, false), voigtKind.make(b)} {
 		func() {
 			defer func() {
 				if recover() != wrongBins {
 					t.Errorf("%T.Fill of 59 bins did not panic with %q", shape, wrongBins)
 				}
 			}()
-			shape.Fill([]float64{126, 0}, make([]float64, 59), nil, nil)
+			shape.Fill([]float64{126, 0, 0}, make([]float64, 59), nil, nil)
 		}()
 	}
 }

@@ -132,7 +132,7 @@ func (s *Scenario) acts(q parameter, a action, scale float64) Acts {
 		}
 	}
 	if a.quantity != actsOnRate {
-		k, _ := kindNamed(p.Form.Kind)
+		k := p.Form.kind()
 		quantity := k.quantities[a.quantity]
 		words.Moves, relative, dimension = quantity.key, quantity.relative, quantity.dimension
 	}

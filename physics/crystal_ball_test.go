@@ -247,3 +247,60 @@ func TestCrystalBallIsGaussian(t *testing.T) {
 		}
 	}
 }
+
+// TestCrystalBallScenario reads one tail of two, moves and frees its quantities.
+func TestCrystalBallScenario(t *testing.T) {
+	const text = `
+[luminosity]
+unit = "d"
+values = [1]
+[[channel]]
+name = "peak"
+window = [100.0, 160.0]
+bins = 30
+  [[channel.signal]]
+  rate = 5.0
+  shape = { kind = "crystal-ball", mean = 126.0, width = 2.0, alpha_high = 1.5, n_high = 3.0 }
+  [[channel.background]]
+  name = "broad"
+  rate = 80.0
+  shape = { kind = "crystal-ball", mean = 126.0, width = 9.0, alpha_low = 1.2, n_low = 1.25, alpha_high = 2, n_high = 5 }
+  free = ["n_low"]
+[[uncertainty]]
+name = "leakage"
+process = "signal"
+moves = "n_high"
+size = 0.25
+`
+	s, err := read("tails.toml", []byte(text))
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := []Quantity{{"mean", 126}, {"width", 2}, {"alpha_high", 1.5}, {"n_high", 3}}
+	if got := s.Channels[0].Processes[0].Form.Quantities; !slices.Equal(got, want) {
+		t.Errorf("the signal has %v, want %v", got, want)
+	}
+	m := mustModel(t, s, 1)
+	signal, broad := m.Channels[0].Processes[0], m.Channels[0].Processes[1]
+	f := make([]float64, 30)
+	signal.Shape.Fill(signal.At, f, nil, nil)
+	compareFractions(t, f, tailed{126, 2, 0, 0, 1.5, 3}.quadrature(equalBins(100, 160, 30)))
+	if len(signal.Move) != 4 || len(signal.Move[3]) != 1 || signal.Move[3][0].Lin != math.Log1p(0.25) {
+		t.Errorf("the signal is moved by %+v, want its last quantity by ln 1.25", signal.Move)
+	}
+	if a := s.Yields(1).Parameters[1].Effects[0]; a.Moves != "n_high" || a.Size != "+25 %" {
+		t.Errorf("leakage acts as %+v", a)
+	}
+	free := m.Params[0]
+	if free.Name != "peak broad n_low" || free.Nominal != 0 {
+		t.Errorf("free power is %+v", free)
+	}
+	for _, offset := range []float64{free.Lower, free.Upper} {
+		q := slices.Clone(broad.At)
+		q[3] += offset
+		broad.Shape.Fill(q, f, nil, nil)
+		if !(f[0] > 0) {
+			t.Errorf("the first bin holds %v at the bound %v of the power", f[0], offset)
+		}
+	}
+}

@@ -250,3 +250,39 @@ func TestVoigtDerivatives(t *testing.T) {
 		checkDerivatives(t, voigtKind.make(b), b.bins, []float64{mean, math.Log(width), math.Log(natural)}, unit)
 	})
 }
+
+// TestVoigtScenario reads one and holds what its natural width is moved by.
+func TestVoigtScenario(t *testing.T) {
+	const text = `
+[luminosity]
+unit = "d"
+values = [1]
+[[channel]]
+name = "peak"
+window = [100.0, 160.0]
+bins = 30
+  [[channel.signal]]
+  rate = 5.0
+  shape = { kind = "voigt", mean = 126.0, width = 2.0, natural_width = 3.0 }
+  [[channel.background]]
+  name = "flat"
+  rate = 80.0
+  shape = { kind = "uniform" }
+[[uncertainty]]
+name = "lifetime"
+process = "signal"
+moves = "natural_width"
+size = 0.1
+`
+	s, err := read("voigt.toml", []byte(text))
+	if err != nil {
+		t.Fatal(err)
+	}
+	signal := mustModel(t, s, 1).Channels[0].Processes[0]
+	f := make([]float64, 30)
+	signal.Shape.Fill(signal.At, f, nil, nil)
+	compareFractions(t, f, overLorentzian(equalBins(100, 160, 30), 126, 2, 3))
+	if len(signal.Move) != 3 || len(signal.Move[2]) != 1 || signal.Move[2][0].Lin != math.Log1p(0.1) {
+		t.Errorf("the signal is moved by %+v, want its natural width by ln 1.1", signal.Move)
+	}
+}

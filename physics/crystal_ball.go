@@ -407,7 +407,7 @@ func (c *curve) addTail(side int, y1, y2 float64) {
 	l1 := math.Log1p(t.slope * (y1 - t.alpha))
 	length := math.Log1p(t.slope * (y2 - y1) / (1 + t.slope*(y1-t.alpha)))
 	c.f += math.Exp(t.logarithm-t.excess*l1) / t.slope * length * decay(t.excess*length)
-	if !c.derivatives {
+	if !c.derivatives || math.IsInf(length, 1) { // infinite: the integral is not a number already
 		return
 	}
 	const nothing = 45 // exp(-45) of a bin's largest density is below rounding

@@ -123,6 +123,11 @@ func TestCrystalBallDerivatives(t *testing.T) {
 		b := drawBinning(t)
 		c := tailed{width: b.binWidth() * math.Exp(rapid.Float64Range(math.Log(0.2), math.Log(10)).Draw(t, "log width in bins"))}
 		c.mean = b.low + b.window()*rapid.Float64Range(0, 1).Draw(t, "place") + c.width*rapid.Float64Range(-8, 8).Draw(t, "outside")
+		if rapid.Bool().Draw(t, "narrow") { // all of a tail in a bin or two
+			b = equalBins(0, float64(b.bins), b.bins) // where the mean's rounding is small against the width
+			c.width = rapid.Float64Range(0.005, 0.2).Draw(t, "width in bins")
+			c.mean = float64(b.bins)*rapid.Float64Range(0, 1).Draw(t, "place of a narrow one") + c.width*rapid.Float64Range(-3, 3).Draw(t, "outside by")
+		}
 		// What a quantity changes by in which the logarithm of the density changes by 1.
 		far := math.Max(1, math.Max(b.low-c.mean, c.mean-b.high)/c.width)
 		unit := []float64{c.width / far, 1 / (far * far)}

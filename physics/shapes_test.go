@@ -172,6 +172,11 @@ func checkDerivatives(t *rapid.T, shape stats.Shape, bins int, q, unit []float64
 	f := make([]float64, bins)
 	d1 := make([]float64, n*bins)
 	d2 := make([]float64, n*(n+1)/2*bins)
+	for _, list := range [][]float64{f, d1, d2} { // nothing may be left as it was
+		for i := range list {
+			list[i] = math.NaN()
+		}
+	}
 	shape.Fill(q, f, d1, d2)
 
 	alone := make([]float64, bins)
@@ -353,6 +358,8 @@ func TestUndefinedShapes(t *testing.T) {
 		{"no alpha", newCrystalBall(b, false, true), []float64{126, 0, math.Inf(-1), 1}},
 		{"side without a tail far away", newCrystalBall(b, false, true), []float64{400, 0, 0, 1}},
 		{"tail of no width", newCrystalBall(b, true, false), []float64{126, math.Inf(-1), 0, 1}},
+		{"edges infinitely many widths away", newCrystalBall(b, true, true), []float64{1e300, -300, 0, 1e-200, 0, 1e-200}},
+		{"voigt, edges infinitely many widths away", voigtKind.make(b), []float64{1e300, -300, 0}},
 		{"voigt of mean not a number", voigtKind.make(b), []float64{math.NaN(), 0, 0}},
 		{"voigt of no width", voigtKind.make(b), []float64{126, math.Inf(-1), 0}},
 		{"no natural width", voigtKind.make(b), []float64{126, 0, math.Inf(-1)}},

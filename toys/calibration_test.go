@@ -59,7 +59,11 @@ var exactCount = []float64{2.82475e-07, 1.60815, 0.629698, 0.854847, 1.20276, 1.
 // standard errors; that of the mean is wider on the window by the error of its
 // truth.
 func TestErrorCalibration(t *testing.T) {
-	seeds, meanBound, widthBound := 24, 4.5/math.Sqrt(24), 4.5/math.Sqrt(2*24)
+	seeds := 24
+	if testing.Short() {
+		seeds = 8
+	}
+	meanBound, widthBound := 4.5/math.Sqrt(float64(seeds)), 4.5/math.Sqrt(2*float64(seeds))
 	long := os.Getenv("LUMIREACH_SEEDS") != ""
 	if long {
 		var err error

@@ -50,7 +50,7 @@ func boundsOfJoint(_ binning, alpha float64) (lower, upper, step float64) {
 	return -math.Ln10, max(0, min(math.Ln10, math.Log(farthest/alpha))), 0.1
 }
 
-// boundsOfPower stays above a power of 1, where the shape ends.
+// boundsOfPower stays above a power of 1, as scenarios do.
 func boundsOfPower(_ binning, n float64) (lower, upper, step float64) {
 	return math.Log1p(1e-3*(n-1)) - math.Log(n), 2 * math.Ln10, 0.1
 }
@@ -87,8 +87,9 @@ func newCrystalBall(b binning, low, high bool) crystalBall {
 // there.
 const finest = 0.01
 
-// Fill implements stats.Shape. The shape does not exist where a power is not above
-// 1, or where the window holds less than emptyWindow of the peak.
+// Fill implements stats.Shape. Over a window powers of 1 and below are like others: an
+// uncertainty may lead there. The shape does not exist where the window holds less
+// than emptyWindow of the peak.
 func (s crystalBall) Fill(q, f, d1, d2 []float64) {
 	if len(f) != s.bins {
 		panic(wrongBins)
@@ -122,10 +123,10 @@ func (s crystalBall) Fill(q, f, d1, d2 []float64) {
 			p2 = c.point(z2)
 		}
 		c.cell = cell{}
-		if z2-z1 < finest {
-			c.quadrature(z1, z2)
+		if width := (s.at[i+1] - s.at[i]) * inverse; width < finest {
+			c.quadrature(z1, z2, width)
 		} else {
-			c.closed(z1, z2, &p1, &p2)
+			c.closed(z1, z2, width, &p1, &p2)
 		}
 		f[i] = c.f
 		total += c.f
@@ -187,7 +188,7 @@ func (s crystalBall) store(c *cell, i int, d1, d2 []float64) {
 // widths: g(y) = exp(-α²/2) (1 + α(y-α)/n)^-n for y > α.
 type powerTail struct {
 	alpha, n  float64
-	excess    float64 // n-1
+	excess    float64 // n-1, of either sign
 	slope     float64 // α/n
 	logarithm float64 // of the value at the joint
 }
@@ -203,7 +204,7 @@ func newPowerTail(a, n float64) powerTail {
 }
 
 func (t powerTail) exists() bool {
-	return t.excess > 0 && t.slope > 0 && !math.IsInf(t.n/t.slope, 1) && !math.IsInf(t.logarithm, -1)
+	return t.n > 0 && t.slope > 0 && !math.IsInf(t.n/t.slope, 1) && !math.IsInf(t.logarithm, -1)
 }
 
 // cell is the integral over a bin of the curve g(z), z = (x-mean)/width, and its
@@ -288,24 +289,33 @@ func (t *powerTail) logDerivatives(l, p, e float64) logDerivatives {
 	}
 }
 
-// parts cuts a bin at the joints: the low tail ends at low, the high one begins
-// at high.
-func (c *curve) parts(z1, z2 float64) (low, high float64) {
-	low = max(z1, min(z2, -c.tails[0].alpha))
-	high = min(z2, max(z1, c.tails[1].alpha))
-	return low, high
+// parts cuts a bin at the joints, into a low tail, core and high tail, each with its
+// beginning and length. The width of the bin is given beside its edges, which may be
+// so far out that their difference has lost digits.
+func (c *curve) parts(z1, z2, width float64) (from, length [3]float64) {
+	low, high := -c.tails[0].alpha, c.tails[1].alpha
+	from = [3]float64{z1, max(z1, low), max(z1, high)}
+	switch {
+	case z2 <= low:
+		length[0] = width
+	case z1 >= high:
+		length[2] = width
+	default:
+		length[0], length[2] = max(0, low-z1), max(0, z2-high)
+		length[1] = width - length[0] - length[2]
+	}
+	return from, length
 }
 
 // quadrature integrates the curve over a bin that is narrow against the width.
-func (c *curve) quadrature(z1, z2 float64) {
-	low, high := c.parts(z1, z2)
-	for _, part := range [3][2]float64{{z1, low}, {low, high}, {high, z2}} {
-		length := part[1] - part[0]
+func (c *curve) quadrature(z1, z2, width float64) {
+	from, lengths := c.parts(z1, z2, width)
+	for i, length := range lengths {
 		if !(length > 0) {
 			continue
 		}
 		for k, x := range fourPoints.at {
-			z := part[0] + x*length
+			z := from[i] + x*length
 			p := c.point(z)
 			c.addPoint(z, length*fourPoints.weight[k], &p)
 		}
@@ -343,16 +353,16 @@ func (c *curve) addPoint(z, weight float64, p *point) {
 
 // closed integrates the curve over a bin by its integral, and takes derivatives
 // by mean and width from the bin's two edges.
-func (c *curve) closed(z1, z2 float64, p1, p2 *point) {
-	low, high := c.parts(z1, z2)
-	if low > z1 {
-		c.addTail(0, -low, -z1)
+func (c *curve) closed(z1, z2, width float64, p1, p2 *point) {
+	from, length := c.parts(z1, z2, width)
+	if length[0] > 0 {
+		c.addTail(0, -from[0]-length[0], length[0])
 	}
-	if high > low {
-		c.f += core(low, high)
+	if length[1] > 0 {
+		c.f += core(from[1], min(z2, c.tails[1].alpha))
 	}
-	if high < z2 {
-		c.addTail(1, high, z2)
+	if length[2] > 0 {
+		c.addTail(1, from[2], length[2])
 	}
 	if c.derivatives {
 		c.addEdge(z1, -1, p1)
@@ -396,44 +406,54 @@ func beyond(z float64) float64 {
 	return math.Exp(-0.5*z*z) * mills(z*millsSteps)
 }
 
-// addTail adds the tail between two distances from the mean. In l = ln(1+s) it is
-// an exponential, ∫g dy = n/α exp(-α²/2) ∫exp(-(n-1)l) dl, which has no singular
-// power, 1 included. Derivatives by the tail's own quantities are integrals of this
-// exponential times powers of l and exp(-l); closed forms of them cancel for large
-// powers, so they are summed over pieces in which eight points, or fewer,
-// are exact to rounding.
-func (c *curve) addTail(side int, y1, y2 float64) {
+// addTail adds the tail that begins at a distance from the mean, over a length. In l
+// = ln(1+s), s = α(y-α)/n, it is an exponential that begins at l1 and is long by r,
+//
+//	ln F = -α²/2 + ln(n/α) - (n-1)·l1 + ln ∫exp(-(n-1)l) dl from 0 to r,
+//
+// which has no singular power. Derivatives are those of ln F by the chain rule, with
+// the moments of l, and l_a, l_n and their derivatives as in logDerivatives. They are
+// at a fixed place, as if a joint did not move: it changes F in third order only.
+func (c *curve) addTail(side int, distance, length float64) {
 	t := &c.tails[side]
-	l1 := math.Log1p(t.slope * (y1 - t.alpha))
-	length := math.Log1p(t.slope * (y2 - y1) / (1 + t.slope*(y1-t.alpha)))
-	c.f += math.Exp(t.logarithm-t.excess*l1) / t.slope * length * decay(t.excess*length)
-	if !c.derivatives || math.IsInf(length, 1) { // infinite: the integral is not a number already
+	s := t.slope * (distance - t.alpha)
+	e1 := 1 / (1 + s)
+	l := math.Log1p(s)
+	step := t.slope * length * e1
+	r := math.Log1p(step)
+	decays := t.excess * r
+	f := math.Exp(t.logarithm-t.excess*l) / t.slope * r * decay(decays)
+	c.f += f
+	if !c.derivatives || f == 0 {
 		return
 	}
-	const nothing = 45 // exp(-45) of a bin's largest density is below rounding
-	length = min(length, nothing/t.excess)
-	steps, r := 1, &eightPoints
-	if span := (t.n + 1) * length; span > 3 {
-		steps = int(math.Ceil(span / 3))
-	} else if span < 0.3 {
-		r = &fourPoints
-	} else if span < 1.5 {
-		r = &sixPoints
+	mean, variance := decayMoments(decays)
+	last := 1 - decays*mean // r times the density of l at its end
+	square := t.alpha * t.alpha
+	x := t.alpha * t.slope // α²/n
+	p := s * e1
+	e2 := e1 / (1 + step)
+	la := p - x*e1
+	laa, lan, lnn := e1*((1+x)*la-2*x), e1*(x-(1+x)*p), e1*p
+	// Derivatives of r, over r.
+	q := step * e2 / r
+	ra, rn := (1+x)*q, -q
+	raa, ran, rnn := q*((1+x)*(1+x)*(e1+e2)-(1-x)), q*(1-(1+x)*(e1+e2)), q*(e1+e2-1)
+
+	nr := t.n * r
+	both := -last * (decays + last)  // r² ∂²/∂r² of the logarithm of the integral
+	mixed := -last * (1 - mean) * nr // n·r ∂²/∂r∂n
+	k := logDerivatives{
+		a:  -square - 1 - t.excess*la + last*ra,
+		n:  1 - t.n*l + t.excess*p - nr*mean + last*rn,
+		aa: -2*square - t.excess*laa + last*raa + both*ra*ra,
+		an: -t.excess*lan - t.n*la + last*ran + both*ra*rn + mixed*ra,
+		nn: -t.excess*lnn + t.n*(2*p-l) - nr*mean + nr*nr*variance + last*rnn + 2*mixed*rn + both*rn*rn,
 	}
-	length /= float64(steps)
 	sums := &c.tail[side]
-	for step := range steps {
-		from := l1 + float64(step)*length
-		for k, x := range r.at {
-			l := from + x*length
-			weight := r.weight[k] * length / t.slope * math.Exp(t.logarithm-t.excess*l)
-			p := -math.Expm1(-l)
-			d := t.logDerivatives(l, p, 1-p)
-			sums.a += weight * d.a
-			sums.n += weight * d.n
-			sums.aa += weight * (d.a*d.a + d.aa)
-			sums.an += weight * (d.a*d.n + d.an)
-			sums.nn += weight * (d.n*d.n + d.nn)
-		}
-	}
+	sums.a += f * k.a
+	sums.n += f * k.n
+	sums.aa += f * (k.a*k.a + k.aa)
+	sums.an += f * (k.a*k.n + k.an)
+	sums.nn += f * (k.n*k.n + k.nn)
 }

@@ -75,6 +75,8 @@ func TestCrystalBallFractions(t *testing.T) {
 		{"both tails", window, tailed{126, 1.6, 1.5, 3, 2, 20}},
 		{"no tail", window, tailed{126, 1.6, 0, 0, 0, 0}},
 		{"power next to 1", window, tailed{126, 1.6, 1, 1 + 1e-9, 1.5, 1.0001}},
+		{"powers of 1 and below", window, tailed{126, 1.6, 1, 1, 1.5, 0.3}},
+		{"power just below 1", window, tailed{126, 1.6, 1, 1 - 1e-9, 1.5, 0.9999}},
 		{"powers near 1 and 2", window, tailed{126, 1.6, 1, 1.02, 1.5, 2}},
 		{"joint near the mean", window, tailed{126, 1.6, 0.1, 3, 0.15, 2}},
 		{"tiny alpha", window, tailed{126, 1.6, 1e-6, 3, 0, 0}},
@@ -89,6 +91,9 @@ func TestCrystalBallFractions(t *testing.T) {
 		{"joint at an edge", window, tailed{126, 1, 2, 3, 3, 4}},
 		{"narrow bins", equalBins(120, 126, 3000), tailed{126, 1.6, 1.5, 3, 0, 0}},
 		{"wider than the window", window, tailed{126, 500, 0.01, 3, 0.02, 2}},
+		{"a million windows wide, window in the tail", window, tailed{3e8, 6e7, 1.5, 3, 0, 0}},
+		{"a million windows wide, window in the core", window, tailed{3e8, 6e7, 0, 0, 1.5, 3}},
+		{"a million windows wide, joint in a bin", window, tailed{9e7 + 126.3, 6e7, 1.5, 3, 0, 0}},
 		{"unequal bins", unequalBins([]float64{100, 101, 110, 120, 124, 125, 125.0001, 126.2, 128, 160}), tailed{126, 1.6, 0.5, 3, 0.7, 4}},
 		{"below the window", window, tailed{80, 4, 1, 3, 1, 2}},
 		{"below the window, core alone", window, tailed{80, 4, 1, 3, 0, 0}},
@@ -132,15 +137,15 @@ func TestCrystalBallDerivatives(t *testing.T) {
 		far := math.Max(1, math.Max(b.low-c.mean, c.mean-b.high)/c.width)
 		unit := []float64{c.width / far, 1 / (far * far)}
 		alpha := rapid.Float64Range(math.Log(0.1), math.Log(10))
-		n := rapid.Float64Range(math.Log(0.01), math.Log(200))
+		n := rapid.OneOf(rapid.Float64Range(math.Log(0.2), math.Log(200)), rapid.Float64Range(-0.02, 0.02), rapid.Just(0.))
 		if rapid.Bool().Draw(t, "low") {
 			c.alphaLow = clearOfEdges(b, c.mean, math.Exp(alpha.Draw(t, "log alpha_low")), -c.width)
-			c.nLow = 1 + math.Exp(n.Draw(t, "log (n_low - 1)"))
+			c.nLow = math.Exp(n.Draw(t, "log n_low"))
 			unit = append(unit, 1/(1+c.alphaLow*c.alphaLow), 1)
 		}
 		if rapid.Bool().Draw(t, "high") {
 			c.alphaHigh = clearOfEdges(b, c.mean, math.Exp(alpha.Draw(t, "log alpha_high")), c.width)
-			c.nHigh = 1 + math.Exp(n.Draw(t, "log (n_high - 1)"))
+			c.nHigh = math.Exp(n.Draw(t, "log n_high"))
 			unit = append(unit, 1/(1+c.alphaHigh*c.alphaHigh), 1)
 		}
 		s, q := c.shape(b)
@@ -153,7 +158,7 @@ func TestCrystalBallDerivatives(t *testing.T) {
 func TestCrystalBallPathsAgree(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		alpha := rapid.Float64Range(math.Log(0.1), math.Log(5))
-		n := rapid.Float64Range(math.Log(1.01), math.Log(1e4))
+		n := rapid.Float64Range(math.Log(0.3), math.Log(1e4))
 		c := curve{inverse: 0.7, derivatives: true}
 		for side := range c.tails {
 			c.tails[side] = newPowerTail(alpha.Draw(t, "log alpha"), n.Draw(t, "log n"))
@@ -164,12 +169,15 @@ func TestCrystalBallPathsAgree(t *testing.T) {
 		}
 		z2 := z1 + finest
 		p1, p2 := c.point(z1), c.point(z2)
-		c.closed(z1, z2, &p1, &p2)
+		c.closed(z1, z2, finest, &p1, &p2)
 		closed := c.cell
 		c.cell = cell{}
-		c.quadrature(z1, z2)
+		c.quadrature(z1, z2, finest)
 		// Every derivative is compared with the size that its terms reach.
-		z, a := 1+math.Abs(z1), 5+c.tails[0].n+c.tails[1].n
+		z, a := 1+math.Abs(z1), 5.0
+		for _, tail := range c.tails {
+			a += tail.n + tail.alpha*tail.alpha
+		}
 		near := func(name string, got, want, scale float64) {
 			if !(math.Abs(got-want) <= 1e-9*c.f*scale) {
 				t.Fatalf("%v: %v by quadrature, %v over the edges (integral %v)", name, got, want, c.f)

@@ -11,9 +11,9 @@
 // It refuses, in one line with file, line and column, whatever it cannot stand
 // behind: unknown keys, values of the wrong kind, names that do not exist,
 // peaks that miss their window, backgrounds that vanish by underflow in a bin
-// where signal can fall. Counting channels and mass windows of equal bins are
-// understood, with the shapes uniform, exponential, gaussian, power, bernstein,
-// crystal-ball, voigt and template.
+// where signal can fall. Counting channels and mass windows of equal or unequal
+// bins are understood, with the shapes uniform, exponential, gaussian, power,
+// bernstein, crystal-ball, voigt and template.
 //
 // The caller watches the units: a luminosity is in the unit of its scenario,
 // rates are selected events per unit luminosity in the channel's window, and

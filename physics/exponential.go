@@ -152,9 +152,9 @@ func (s unequalExponential) Fill(q, f, d1, d2 []float64) {
 	}
 }
 
-// decay is (1 - exp(-t))/t for t >= 0.
+// decay is (1 - exp(-t))/t.
 func decay(t float64) float64 {
-	if t < 1e-8 {
+	if math.Abs(t) < 1e-8 {
 		return 1 - t/2
 	}
 	return -math.Expm1(-t) / t
@@ -164,20 +164,28 @@ func decay(t float64) float64 {
 // density within bin i.
 func (s unequalExponential) inside(i int, slope float64) (mean, variance float64) {
 	low, width := s.edges[i], s.edges[i+1]-s.edges[i]
-	t := math.Abs(slope) * width
-	var m, v float64 // from the edge where the density is larger, over the width
-	if t < 0.02 {
-		square := t * t
-		m = 0.5 - t/12*(1-square/60*(1-square/42))
-		v = 1./12 - square/240*(1-square/25.2)
-	} else {
-		lost := -math.Expm1(-t)
-		ratio := (1 - lost) / lost
-		m = 1/t - ratio
-		v = 1/(t*t) - ratio/lost
-	}
+	m, v := decayMoments(math.Abs(slope) * width) // from the edge where the density is larger
 	if slope > 0 {
 		m = 1 - m
 	}
 	return low - s.low + m*width, v * width * width
+}
+
+// decayMoments are the mean and the variance of y from 0 to 1 with the density
+// exp(-t·y). The mean is (1 - t/(exp(t)-1))/t, whose series has the
+// Bernoulli numbers (DLMF 24.2.1); the variance is its derivative, reversed.
+func decayMoments(t float64) (mean, variance float64) {
+	if t < 0 {
+		mean, variance = decayMoments(-t)
+		return 1 - mean, variance
+	}
+	if t < 0.2 {
+		square := t * t
+		mean = 0.5 - t/12*(1-square/60*(1-square/42*(1-square/40*(1-square*5/198))))
+		variance = 1./12 - square/240*(1-square*5/126*(1-square*7/200*(1-square*5/154)))
+		return mean, variance
+	}
+	lost := -math.Expm1(-t)
+	ratio := (1 - lost) / lost
+	return 1/t - ratio, 1/(t*t) - ratio/lost
 }

@@ -5,7 +5,7 @@ import "gonum.org/v1/gonum/integrate/quad"
 // rule is a Gauss-Legendre rule on [0, 1].
 type rule struct{ at, weight []float64 }
 
-var fourPoints, sixPoints, eightPoints = newRule(4), newRule(6), newRule(8)
+var threePoints, fourPoints = newRule(3), newRule(4)
 
 func newRule(points int) rule {
 	r := rule{make([]float64, points), make([]float64, points)}

@@ -63,12 +63,25 @@ func (s voigt) Fill(q, f, d1, d2 []float64) {
 	var total float64
 	var t1 [3]float64
 	var t2 [6]float64
-	x1 := (s.at[0] - mean) * c
+	low := voigtEdge{x: (s.at[0] - mean) * c}
+	known := false // what low holds beside its place
 	for i := range f {
-		x2 := (s.at[i+1] - mean) * c
+		high := voigtEdge{x: (s.at[i+1] - mean) * c}
 		var v voigtSums
-		v.add(x1, x2, y, d1 != nil)
-		x1 = x2
+		// The bin's own width: its edges may be so far out that their difference has
+		// lost digits.
+		if width := (s.at[i+1] - s.at[i]) * c; width < voigtNarrow*max(1, 0.15*(max(0, low.x, -high.x)+y)) {
+			v.integrate(low.x, width, y, d1 != nil)
+			known = false
+		} else {
+			if !known {
+				low.at(y)
+			}
+			high.at(y)
+			v.difference(&low, &high)
+			known = true
+		}
+		low = high
 		f[i] = v.f
 		total += v.f
 		if d1 == nil {
@@ -95,48 +108,53 @@ func (s voigt) Fill(q, f, d1, d2 []float64) {
 	normalise(f, d1, d2, total, t1[:], t2[:])
 }
 
-// voigtSums are what the derivatives need of a bin: the differences over its edges
-// of w, zw, w', w+zw' and zw+z²w', as integrals of their derivatives, which lose no
-// digits in narrow bins.
+// voigtNarrow is the width of a bin, in √2 widths of the resolution, below which
+// differences over its edges would lose more than two digits; it grows with the
+// distance where that is large. Three Gauss-Legendre points are good to 1e-12 there.
+const voigtNarrow = 0.01
+
+// voigtSums are the integral of Re w over a bin, and what its derivatives need: the
+// differences over the bin's edges of w, zw, w', w+zw' and zw+z²w'.
 type voigtSums struct {
-	f                 float64 // ∫Re w dX
+	f                 float64
 	w, zw, d, zd, zzd complex128
 }
 
-// add integrates from x1 to x2 by Gauss-Legendre, in pieces. Near the centre these
-// are no longer than a standard deviation of the resolution, or a quarter of the
-// natural width; far from it, than half of the distance.
-func (v *voigtSums) add(x1, x2, y float64, derivatives bool) {
-	const far = 7 // exp(-49) of the normal part is left
-	near := max(math.Sqrt2/2, 0.5*y)
-	for x1 < x2 {
-		end, longest := x2, near
-		switch {
-		case x1 < -far: // half of the distance at the piece's end: x1/3 of its beginning
-			end = min(end, -far)
-			longest = max(near, -x1/3)
-		case x1 < far:
-			end = min(end, far)
-		default:
-			longest = max(near, x1/2)
-		}
-		// Pieces of one length, so that the last is not a crumb.
-		end = x1 + (end-x1)/math.Ceil((end-x1)/longest)
-		r := &eightPoints
-		if share := (end - x1) / longest; share < 0.2 {
-			r = &fourPoints
-		} else if share < 0.6 {
-			r = &sixPoints
-		}
-		v.addPiece(x1, end-x1, y, r, derivatives)
-		x1 = end
-	}
+// voigtEdge holds at an edge what voigtSums are differences of; f is the integral
+// outwards.
+type voigtEdge struct {
+	x float64
+	voigtSums
 }
 
-func (v *voigtSums) addPiece(from, length, y float64, r *rule, derivatives bool) {
-	for k, t := range r.at {
+func (e *voigtEdge) at(y float64) {
+	p, z := newFaddeeva(e.x, y), complex(e.x, y)
+	e.f = p.beyond / inverseRootPi
+	e.w, e.d = p.w, p.d1
+	e.zw = z * p.w
+	e.zd = p.w + z*p.d1
+	e.zzd = z * e.zd
+}
+
+func (v *voigtSums) difference(low, high *voigtEdge) {
+	switch {
+	case low.x >= 0:
+		v.f = low.f - high.f
+	case high.x <= 0:
+		v.f = high.f - low.f
+	default:
+		v.f = 1/inverseRootPi - low.f - high.f
+	}
+	v.w, v.d = high.w-low.w, high.d-low.d
+	v.zw, v.zd, v.zzd = high.zw-low.zw, high.zd-low.zd, high.zzd-low.zzd
+}
+
+// integrate takes the integrals of the derivatives instead of the differences, by
+// Gauss-Legendre quadrature.
+func (v *voigtSums) integrate(from, length, y float64, derivatives bool) {
+	for k, t := range threePoints.at {
 		x := from + t*length
-		weight := length * r.weight[k]
+		weight := length * threePoints.weight[k]
 		p := newFaddeeva(x, y)
 		v.f += weight * real(p.w)
 		if !derivatives {

@@ -155,6 +155,82 @@ func TestVoigtFractions(t *testing.T) {
 	}
 }
 
+// TestVoigtBeyond: the integral of the profile from x on is an average of erfc/2 over
+// the Lorentzian, as in overLorentzian, and keeps its digits for any natural width.
+func TestVoigtBeyond(t *testing.T) {
+	for _, x := range []float64{0, 0.3, 1, 2.5, 4, 5.5, 6.9, 7.1, 9, 11, 14, 22, 40, 120} {
+		for _, y := range []float64{1e-12, 1e-6, 1e-3, 0.05, 0.0999, 0.1001, 0.3, 1, 3, 8, 30} {
+			step := 0.3 / math.Max(3, math.Max(x, y))
+			want := 0.0
+			for k := int(-80 / step); float64(k)*step < 80; k++ {
+				v := float64(k) * step
+				want += step / (2 * math.Pi) / math.Cosh(v) * math.Erfc(x-y*math.Sinh(v))
+			}
+			for _, side := range []float64{-x, x} {
+				if got := newFaddeeva(side, y).beyond; !(math.Abs(got-want) <= 2e-13*want) {
+					t.Errorf("beyond %v, half width %v: %v, the average gives %v", side, y, got, want)
+				}
+			}
+		}
+	}
+}
+
+// TestVoigtPathsAgree holds the quadrature of narrow bins, near its own limit, to the
+// differences over edges.
+func TestVoigtPathsAgree(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		x := rapid.Float64Range(-20, 20).Draw(t, "x")
+		y := math.Exp(rapid.Float64Range(math.Log(1e-9), math.Log(10)).Draw(t, "log y"))
+		width := voigtNarrow * math.Max(1, 0.15*(math.Abs(x)+y))
+		low, high := voigtEdge{x: x}, voigtEdge{x: x + width}
+		low.at(y)
+		high.at(y)
+		var over, inside voigtSums
+		over.difference(&low, &high)
+		inside.integrate(x, high.x-low.x, y, true)
+		// Real parts shrink with y where the normal part is over; a difference then has
+		// the digits of either edge, and of the powers of z in it.
+		p := newFaddeeva(x, y)
+		z := 1 + math.Hypot(x, y)
+		re, im := real(p.w)*z*z, 1/z
+		near := func(name string, got, want, scale float64) {
+			if !(math.Abs(got-want) <= 1e-12*scale) {
+				t.Fatalf("%v: %v over the edges, %v by quadrature (integral %v)", name, got, want, inside.f)
+			}
+		}
+		if !(math.Abs(over.f-inside.f) <= 1e-10*inside.f) {
+			t.Fatalf("%v over the edges, %v by quadrature", over.f, inside.f)
+		}
+		near("Re w", real(over.w), real(inside.w), re)
+		near("Im w", imag(over.w), imag(inside.w), im)
+		near("Re zw", real(over.zw), real(inside.zw), re*z)
+		near("Re w'", real(over.d), real(inside.d), re*z)
+		near("Im w'", imag(over.d), imag(inside.d), im*z)
+		near("Re w+zw'", real(over.zd), real(inside.zd), re*z*z)
+		near("Im w+zw'", imag(over.zd), imag(inside.zd), im*z*z)
+		near("Re zw+z²w'", real(over.zzd), real(inside.zzd), re*z*z*z)
+	})
+}
+
+// TestVoigtWide: a window of some 1e-7 widths sees a straight line; what bends is of
+// the order of 1e-14.
+func TestVoigtWide(t *testing.T) {
+	b := equalBins(100, 160, 6)
+	f := make([]float64, b.bins)
+	for _, side := range []float64{-1, 1} {
+		const width, natural, away = 7.3e8, 2e8, 5
+		voigtKind.make(b).Fill([]float64{130 - side*away*width, math.Log(width), math.Log(natural)}, f, nil, nil)
+		w, slope, _ := powerSeries(side*away/math.Sqrt2, natural/width/math.Sqrt(8))
+		for i, v := range f {
+			centre := (b.edge(i)+b.edge(i+1))/2 - 130
+			want := (1 + real(slope)/real(w)*centre/(math.Sqrt2*width)) / 6
+			if !(math.Abs(v-want) < 1e-11) {
+				t.Errorf("mean on side %v, bin %v: fraction %v, want %v", side, i, v, want)
+			}
+		}
+	}
+}
+
 // atCentre is the density at the mean, of a window that holds all but 1e-9.
 func atCentre(width, natural float64) float64 {
 	const half = 1e-6

@@ -36,10 +36,11 @@ func (r *runner) throw(e *stats.Engine, luminosity float64, use purpose, proposa
 		for component := range proposals {
 			w.stream.restart(key{r.config.Seed, use, luminosity, component, block})
 			for range m.inBlock(component, block, blocks) {
-				m.throw(w, component)
-				q, status := w.fit.Q0(&w.data, proposals[component].near)
-				if status != stats.Converged {
-					q = math.NaN()
+				q := math.NaN()
+				if m.throw(w, component) {
+					if value, status := w.fit.Q0(&w.data, proposals[component].near); status == stats.Converged {
+						q = value
+					}
 				}
 				weight := 1.0
 				if len(proposals) > 1 {

@@ -16,7 +16,7 @@ type parameters struct {
 	gamma []float64 // modes of the simulation factors
 	tilt  []float64 // by bin: factor on the expectation; nil for 1
 
-	logTilt []float64
+	logTilt, logGamma []float64
 }
 
 // at is a proposal at nominal parameters, or where they are drawn from what is
@@ -44,6 +44,7 @@ type drawnToy struct {
 	taus, theta, gamma    []float64
 	signal, background    []float64
 	expected, logExpected []float64
+	exists                bool // whether every shape does
 }
 
 func newDrawnToy(e *stats.Engine) *drawnToy {
@@ -56,8 +57,9 @@ func newDrawnToy(e *stats.Engine) *drawnToy {
 }
 
 // throwDrawn draws a toy's parameters, then its counts. What is known of a
-// simulation factor after τ events is Gamma(τ+1, 1/τ).
-func (m *mixture) throwDrawn(w *worker, k int) {
+// simulation factor after τ events is Gamma(τ+1, 1/τ). It is false where a shape
+// does not exist with these parameters: there is no data then, and no fit.
+func (m *mixture) throwDrawn(w *worker, k int) bool {
 	p, t := m.proposals[k].drawn, w.drawn
 	for j, mean := range p.theta {
 		t.theta[j] = mean + w.stream.NormFloat64()
@@ -66,16 +68,25 @@ func (m *mixture) throwDrawn(w *worker, k int) {
 		t.gamma[i] = distuv.Gamma{Alpha: t.taus[i] + 1, Beta: t.taus[i] / mode, Src: w.stream.source}.Rand()
 	}
 	t.split.Split(t.theta, t.gamma, t.signal, t.background)
-	for bin := range w.data.N {
-		mean := p.mu*t.signal[bin] + t.background[bin]
+	t.exists = true
+	for bin, b := range t.background {
+		mean := p.mu*t.signal[bin] + b
 		if p.tilt != nil {
 			mean *= p.tilt[bin]
 		}
+		t.expected[bin] = mean
+		t.exists = t.exists && mean >= 0 && !math.IsInf(mean, 1)
+	}
+	if !t.exists {
+		return false
+	}
+	for bin, mean := range t.expected {
 		count := newPoisson(mean, 1)
 		w.data.N[bin] = count.draw(w.stream)
 	}
 	clear(w.data.A)
 	copy(w.data.M, t.taus)
+	return true
 }
 
 func (m *mixture) prepareDrawn() {
@@ -84,39 +95,51 @@ func (m *mixture) prepareDrawn() {
 		for _, tilt := range p.tilt {
 			p.logTilt = append(p.logTilt, math.Log(tilt))
 		}
+		for _, mode := range p.gamma {
+			p.logGamma = append(p.logGamma, math.Log(mode))
+		}
 	}
 }
 
-// logDrawn is logDensities over parameters and counts.
+// logDrawn is logDensities over parameters and counts, or over parameters alone
+// where these give no counts.
 func (m *mixture) logDrawn(w *worker) {
 	t := w.drawn
 	last := math.NaN()
 	for k := range m.proposals {
 		p := m.proposals[k].drawn
-		if p.mu != last {
-			last = p.mu
-			for bin, b := range t.background {
-				t.expected[bin] = p.mu*t.signal[bin] + b
-				t.logExpected[bin] = math.Log(t.expected[bin])
-			}
-		}
 		sum := 0.0
 		for j, mean := range p.theta {
 			z := t.theta[j] - mean
 			sum -= z * z / 2
 		}
 		for i, mode := range p.gamma {
-			sum -= (t.taus[i]+1)*math.Log(mode) + t.taus[i]*t.gamma[i]/mode
+			sum -= (t.taus[i]+1)*p.logGamma[i] + t.taus[i]*t.gamma[i]/mode
+		}
+		if !t.exists {
+			w.logs[k] = sum
+			continue
+		}
+		if p.mu != last {
+			last = p.mu
+			for bin, b := range t.background {
+				t.expected[bin] = p.mu*t.signal[bin] + b
+				if w.data.N[bin] > 0 {
+					t.logExpected[bin] = math.Log(t.expected[bin])
+				}
+			}
 		}
 		for bin, n := range w.data.N {
-			mean, logMean := t.expected[bin], t.logExpected[bin]
+			mean := t.expected[bin]
 			if p.tilt != nil {
 				mean *= p.tilt[bin]
-				logMean += p.logTilt[bin]
 			}
 			sum -= mean
 			if n > 0 {
-				sum += n * logMean
+				sum += n * t.logExpected[bin]
+				if p.tilt != nil {
+					sum += n * p.logTilt[bin]
+				}
 			}
 		}
 		w.logs[k] = sum

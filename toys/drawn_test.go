@@ -151,3 +151,55 @@ func TestDrawnWindow(t *testing.T) {
 		t.Errorf("P(q0 >= 25) = %v ± %v, want it trusted and known to 10 %%", e.p, e.err)
 	}
 }
+
+// cliff exists below a place of its quantity alone.
+type cliff struct{ end float64 }
+
+func (s cliff) Fill(q, f, d1, d2 []float64) {
+	for i := range f {
+		f[i] = 0.5
+		if q[0] > s.end {
+			f[i] = math.NaN()
+		}
+	}
+	for i := range d1 {
+		d1[i] = 0
+	}
+	for i := range d2 {
+		d2[i] = 0
+	}
+}
+
+// Parameters drawn where a shape does not exist give no data: the toy counts as
+// failed, no more often than its parameters are drawn, and the run ends.
+func TestDrawnBeyondShape(t *testing.T) {
+	const (
+		k    = 4.5 // errors; right code fails for 1 seed in 150000
+		toys = 4000
+	)
+	search := func(l float64) (stats.Model, error) {
+		m, err := uncertain(10, 20, 0.1)(l)
+		m.Params = append(m.Params, m.Params[0])
+		m.Channels = append(m.Channels, stats.Channel{Bins: 2, Processes: []stats.Process{
+			{Yield: 5 * l, Factor: -1, Shape: cliff{1}, At: []float64{0}, Move: [][]stats.Effect{{{Param: 1, Lin: 1}}}},
+		}})
+		return m, err
+	}
+	r := testRunner(t, Config{Toys: toys, Seed: 13, Nuisances: Drawn})
+	e := engine(t, search, 1)
+	signal, err := r.signal(e, 1, toys)
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := stats.PValue(1)
+	if got, se := float64(signal.failed)/toys, math.Sqrt(want*(1-want)/toys); math.Abs(got-want) > k*se {
+		t.Errorf("%v of the toys failed, want %v ± %v (seed 13)", got, want, se)
+	}
+	x, err := r.limits(e, 1, formulaExclusion(e, 0.95).MuUp)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if x.FailedFits == 0 {
+		t.Error("no failed fit among the toys of limits")
+	}
+}

@@ -57,17 +57,22 @@ func (r *runner) jointFrom(e *stats.Engine, luminosity float64, use purpose, nod
 			for range m.inBlock(component, block, blocks) {
 				toy := limitToy{q: memory[:len(nodes):len(nodes)], weight: memory[len(nodes) : len(nodes)+hypotheses]}
 				memory = memory[len(nodes)+hypotheses:]
-				m.throw(w, component)
+				thrown := m.throw(w, component)
 				m.logDensities(w)
 				m.balance(w.logs)
 				copy(toy.weight, w.logs)
-				free := w.fit.Free(&w.data, proposals[component].near, math.Inf(1))
+				var free stats.Fit
+				if thrown {
+					free = w.fit.Free(&w.data, proposals[component].near, math.Inf(1))
+				}
 				for k, mu := range nodes {
-					q, status := w.fit.QTilde(&w.data, mu, free)
-					if status != stats.Converged {
-						q = math.NaN()
+					toy.q[k] = math.NaN()
+					if !thrown {
+						continue
 					}
-					toy.q[k] = q
+					if q, status := w.fit.QTilde(&w.data, mu, free); status == stats.Converged {
+						toy.q[k] = q
+					}
 				}
 				toys[i] = toy
 				i++
@@ -138,7 +143,7 @@ func (r *runner) deficits(e *stats.Engine, nodes []float64, toys int) []proposal
 	at := func(mu, z float64) proposal {
 		if r.config.Nuisances == Drawn {
 			c := e.DrawnDeficit(mu, z)
-			return proposal{drawn: &parameters{mu: mu, theta: c.Theta, gamma: c.Gamma, tilt: c.Tilt}, near: mu, toys: toys}
+			return proposal{drawn: &parameters{mu: mu, theta: c.Theta, gamma: c.Gamma, tilt: c.Tilt}, toys: toys}
 		}
 		c := e.Deficit(mu, z)
 		return proposal{Point: c.Point, spread: c.Spread, toys: toys}

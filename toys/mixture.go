@@ -73,11 +73,11 @@ func (m *mixture) prepare(k int, reference []float64) {
 }
 
 // throw fills w.data with an experiment from proposal k: Poisson counts, normal
-// auxiliary measurements.
-func (m *mixture) throw(w *worker, k int) {
+// auxiliary measurements. It is false where parameters were drawn with which there
+// is none.
+func (m *mixture) throw(w *worker, k int) bool {
 	if w.drawn != nil {
-		m.throwDrawn(w, k)
-		return
+		return m.throwDrawn(w, k)
 	}
 	d, s, counts := &w.data, w.stream, m.counts[k]
 	for bin := range d.N {
@@ -94,6 +94,7 @@ func (m *mixture) throw(w *worker, k int) {
 		}
 		d.A[j] = a + z
 	}
+	return true
 }
 
 // logDensities sets w.logs[k] to the logarithm of the probability density of

@@ -26,6 +26,9 @@ const (
 
 // newPoisson prepares so many draws.
 func newPoisson(mean float64, draws int) poisson {
+	if !(mean >= 0) || math.IsInf(mean, 1) {
+		panic("toys: a Poisson mean is negative or not finite") // rejection would never end
+	}
 	p := poisson{mean: mean}
 	switch {
 	case mean == 0:
